@@ -117,7 +117,9 @@ func screenshot(t *testing.T, ctx context.Context, name string) {
 }
 
 // script runs JavaScript in the page.
-func script(text string) chromedp.Action[chromedp.Void] { return chromedp.Evaluate[chromedp.Void](text) }
+func script(text string) chromedp.Action[chromedp.Void] {
+	return chromedp.Evaluate[chromedp.Void](text)
+}
 
 // until waits for a JavaScript condition of the page.
 func until(condition string) chromedp.Action[chromedp.Void] {
