@@ -1,0 +1,144 @@
+package plotting
+
+import (
+	"math"
+
+	"gonum.org/v1/plot"
+	"gonum.org/v1/plot/font"
+	"gonum.org/v1/plot/text"
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+)
+
+const (
+	markRadius = vg.Length(2.4) // of the mark on a tone
+	apart      = vg.Length(3.5) // distance of tones at one frequency
+)
+
+// tones draws discrete lines as stems with a scale of their own: a tone has a power, a density has none at any one
+// frequency, so the two can share no axis.
+type tones struct {
+	series   []toneSeries
+	min, max float64     // range of the stems' axis
+	label    string      // of the axis at the right; without one the stems share the left axis
+	marker   plot.Ticker // of the axis at the right
+}
+
+type toneSeries struct {
+	freqs, values []float64 // values in the axis's unit
+	style         draw.LineStyle
+	mark          draw.GlyphDrawer
+}
+
+// A stem is one tone on the canvas.
+type stem struct {
+	series int
+	top    vg.Point
+}
+
+// stems returns the tones that the axes show, those of the first series first. Tones of several series at one
+// frequency stand side by side around it.
+func (t *tones) stems(c draw.Canvas, p *plot.Plot) []stem {
+	x, _ := p.Transforms(&c)
+	at := func(f float64) (v vg.Length, shown bool) {
+		return x(f), f >= p.X.Min && f <= p.X.Max*(1+1e-12)
+	}
+	shared := map[int64]int{} // number of tones at a place, in hundredths of a point
+	place := func(v vg.Length) int64 { return int64(math.Round(v.Points() * 100)) }
+	for _, s := range t.series {
+		for i, f := range s.freqs {
+			if v, ok := at(f); ok && s.values[i] > t.min {
+				shared[place(v)]++
+			}
+		}
+	}
+	seen := map[int64]int{}
+	var out []stem
+	for k, s := range t.series {
+		for i, f := range s.freqs {
+			v, ok := at(f)
+			if !ok || !(s.values[i] > t.min) {
+				continue
+			}
+			key := place(v)
+			shift := (vg.Length(seen[key]) - vg.Length(shared[key]-1)/2) * apart
+			seen[key]++
+			height := math.Min(1, (s.values[i]-t.min)/(t.max-t.min))
+			out = append(out, stem{k, vg.Point{X: v + shift, Y: c.Y(height)}})
+		}
+	}
+	return out
+}
+
+// avoid returns what the stems cover.
+func (t *tones) avoid(c draw.Canvas, p *plot.Plot) []vg.Rectangle {
+	var out []vg.Rectangle
+	for _, s := range t.stems(c, p) {
+		out = append(out, vg.Rectangle{
+			Min: vg.Point{X: s.top.X - markRadius, Y: c.Min.Y},
+			Max: vg.Point{X: s.top.X + markRadius, Y: s.top.Y + markRadius},
+		})
+	}
+	return out
+}
+
+func (t *tones) tickStyle(p *plot.Plot) text.Style {
+	return text.Style{Font: font.From(sans, tickSize), Color: ink, YAlign: draw.YCenter, Handler: p.TextHandler}
+}
+
+func (t *tones) labelStyle(p *plot.Plot) text.Style {
+	return text.Style{Font: font.From(sans, labelSize), Color: ink, XAlign: draw.XCenter, Rotation: math.Pi / 2, Handler: p.TextHandler}
+}
+
+// columns returns where the parts of the right axis stand, counted from the right end of the data: its line, its tick
+// labels, its label and its end.
+func (t *tones) columns(p *plot.Plot) (line, ticks, label, end vg.Length) {
+	line = p.Y.Padding
+	ticks = line + p.Y.Tick.Length + t.tickStyle(p).Width(" ")
+	label = ticks
+	for _, k := range t.marker.Ticks(t.min, t.max) {
+		label = max(label, ticks+t.tickStyle(p).Width(k.Label))
+	}
+	if p.Y.Label.Text == "" { // a terminal, which has all axis labels above the picture
+		return line, ticks, label, label
+	}
+	label += p.Y.Label.Padding + t.labelStyle(p).FontExtents().Ascent
+	return line, ticks, label, label + t.labelStyle(p).FontExtents().Descent
+}
+
+// GlyphBoxes keeps room for the right axis.
+func (t *tones) GlyphBoxes(p *plot.Plot) []plot.GlyphBox {
+	if t.label == "" {
+		return nil
+	}
+	_, _, _, end := t.columns(p)
+	return []plot.GlyphBox{{X: 1, Rectangle: vg.Rectangle{Max: vg.Point{X: end}}}}
+}
+
+// Plot draws the stems and their axis.
+func (t *tones) Plot(c draw.Canvas, p *plot.Plot) {
+	for _, s := range t.stems(c, p) {
+		style := t.series[s.series].style
+		line := draw.LineStyle{Color: style.Color, Width: 1.1}
+		c.StrokeLine2(line, s.top.X, c.Min.Y, s.top.X, s.top.Y)
+		t.series[s.series].mark.DrawGlyph(&c, draw.GlyphStyle{Color: style.Color, Radius: markRadius}, s.top)
+	}
+	if t.label == "" {
+		return
+	}
+	line, ticks, label, _ := t.columns(p)
+	c.StrokeLine2(p.Y.LineStyle, c.Max.X+line, c.Min.Y, c.Max.X+line, c.Max.Y)
+	sty := t.tickStyle(p)
+	for _, k := range t.marker.Ticks(t.min, t.max) {
+		y := c.Y((k.Value - t.min) / (t.max - t.min))
+		length := p.Y.Tick.Length
+		if k.IsMinor() {
+			length /= 2
+		}
+		if length > 0 {
+			c.StrokeLine2(p.Y.Tick.LineStyle, c.Max.X+line, y, c.Max.X+line+length, y)
+		}
+		c.FillText(sty, vg.Point{X: c.Max.X + ticks, Y: y + sty.FontExtents().Descent}, k.Label)
+	}
+	c.FillText(t.labelStyle(p), vg.Point{X: c.Max.X + label, Y: c.Center().Y}, t.label)
+}
