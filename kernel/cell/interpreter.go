@@ -1,0 +1,222 @@
+package cell
+
+import (
+	"context"
+	"go/parser"
+	"go/token"
+	"go/types"
+	"reflect"
+	"slices"
+	"sync"
+	"sync/atomic"
+
+	"github.com/traefik/yaegi/interp"
+
+	"linewright/builtins/page"
+	"linewright/plotting"
+)
+
+// Output takes what a running cell puts out. Its methods may be called from any goroutine. An Output that also has the
+// method Exit(code int) is asked to end the process when a cell calls os.Exit or log.Fatal, after it has passed on
+// what it holds; without it the process ends at once.
+type Output interface {
+	Stream(name string, p []byte) // "stdout" or "stderr"; may be called with a few bytes at a time
+	Display(b plotting.Bundle, id string, update bool)
+	Clear(wait bool)
+	Ask(prompt string, secret bool) (string, error) // page.ErrNoReader where nobody can be asked; ctx error on interrupt
+}
+
+// Error is a failed cell, ready for the protocol's error message. Trace lines are plain text.
+type Error struct {
+	Name  string // "compile error", "panic", "interrupted", "error"
+	Value string
+	Trace []string
+}
+
+func (e *Error) Error() string { return e.Name + ": " + e.Value }
+
+// Options set up an [Interpreter]. The zero value works.
+type Options struct {
+	Parameters map[string]string // values of page parameters set for the run
+}
+
+// Interpreter is one session: what its cells have declared, and the interpreter that runs them. Its methods may be called
+// from any goroutine; cells run one at a time.
+type Interpreter struct {
+	opt     Options
+	vm      *machine
+	fset    *token.FileSet
+	running sync.Mutex // held while a cell runs
+
+	// types guards what the checker reads and writes, all below and every go/types object that they hold. It is held for
+	// the milliseconds of a check, never while a cell runs, so that completion answers meanwhile.
+	types     sync.Mutex
+	lib       *library
+	names     map[string]*entry       // live package-level declarations
+	imports   map[string]string       // names of the cells' own imports -> path
+	preloaded map[string]string       // names of packages that need no import -> path
+	slots     map[types.Object]string // the interpreter's names of live objects and of all types
+	gens      generations
+	aliases   map[string]string // package path -> name under which the interpreter imports it
+	aliasPath map[string]string // the reverse
+	imported  map[string]bool   // aliases that the interpreter has imported
+
+	current atomic.Pointer[run] // the running cell, or the last one
+	settled chan struct{}       // closed when an interrupted cell has come to rest; owned by the holder of running
+
+	page pageState
+}
+
+// entry is one live package-level declaration.
+type entry struct {
+	obj  types.Object
+	cell int
+	decl *decl // nil for variables
+}
+
+// New starts a session.
+func New(opt Options) (*Interpreter, error) {
+	lib, err := newLibrary()
+	if err != nil {
+		return nil, err
+	}
+	in := &Interpreter{
+		opt: opt, lib: lib,
+		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
+		slots: map[types.Object]string{}, gens: generations{},
+		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
+	}
+	for name, path := range lib.own {
+		in.preloaded[name] = path
+	}
+	in.vm, err = newMachine(stream{in, "stdout"}, traceWriter{in}, in.hooks())
+	if err != nil {
+		return nil, err
+	}
+	in.fset = in.vm.yaegi.FileSet()
+	if _, err := in.vm.yaegi.Eval(`import ` + kernel + ` "linewright/cell"`); err != nil {
+		return nil, err
+	}
+	in.settled = make(chan struct{})
+	close(in.settled)
+	return in, nil
+}
+
+// hooks are the functions of this package that lowered cells call, and those that replace functions of the standard
+// library.
+func (in *Interpreter) hooks() interp.Exports {
+	return interp.Exports{
+		"linewright/cell/cell": {
+			"Show":    reflect.ValueOf(in.show),
+			"Recover": reflect.ValueOf(in.recovered),
+		},
+	}
+}
+
+// Run executes one cell; n is its number for positions ("cell[3]:2:5"). The bundle is nil if the last statement has no
+// value. An error is an *[Error].
+func (in *Interpreter) Run(ctx context.Context, n int, code, cellID string, out Output) (*plotting.Bundle, error) {
+	in.running.Lock()
+	defer in.running.Unlock()
+	<-in.settled
+	r := in.begin(ctx, n, code, cellID, out)
+	defer r.cancel()
+	p, err := in.prepare(r, code)
+	if err != nil {
+		return nil, r.compileError(err)
+	}
+	return in.execute(r, p)
+}
+
+// Evaluate evaluates one expression (user_expressions). It declares nothing.
+func (in *Interpreter) Evaluate(ctx context.Context, expr string, out Output) (plotting.Bundle, error) {
+	if _, err := parser.ParseExpr(expr); err != nil {
+		return plotting.Bundle{}, &Error{Name: "compile error", Value: "no expression: " + expr, Trace: []string{"no expression: " + expr}}
+	}
+	n := 0
+	if r := in.current.Load(); r != nil {
+		n = r.n
+	}
+	b, err := in.Run(ctx, n, expr, "", out)
+	if err != nil {
+		return plotting.Bundle{}, err
+	}
+	if b == nil {
+		return plotting.Bundle{}, &Error{Name: "error", Value: "the expression has no value: " + expr, Trace: []string{"the expression has no value: " + expr}}
+	}
+	return *b, nil
+}
+
+// Asked returns the names of the parameters that cells have asked for so far, sorted.
+func (in *Interpreter) Asked() []string {
+	in.page.mu.Lock()
+	defer in.page.mu.Unlock()
+	return sorted(in.page.asked)
+}
+
+// prepare checks, lowers and compiles a cell and, if all that succeeds, commits what it declares.
+func (in *Interpreter) prepare(r *run, code string) (*program, error) {
+	in.types.Lock()
+	defer in.types.Unlock()
+	src, err := parse(in.fset, r.n, code)
+	if err != nil {
+		return nil, err
+	}
+	u, err := in.check(src)
+	if err != nil {
+		return nil, err
+	}
+	p, err := in.lower(u)
+	if err != nil {
+		return nil, err
+	}
+	if err := in.vm.declare(slices.Concat(p.imports)); err != nil {
+		return nil, err
+	}
+	for _, d := range u.src.decls {
+		_ = d
+	}
+	for a := range in.aliasPath {
+		in.imported[a] = true
+	}
+	if err := in.vm.declare(p.types); err != nil {
+		return nil, err
+	}
+	if err := in.vm.declare(p.vars); err != nil {
+		return nil, err
+	}
+	if err := in.vm.declare(p.funcs); err != nil {
+		return nil, err
+	}
+	in.commit(u, p)
+	return p, nil
+}
+
+// commit makes a compiled cell's declarations those of the session.
+func (in *Interpreter) commit(u *unit, p *program) {
+	for name, path := range u.imports {
+		delete(in.names, name)
+		in.imports[name] = path
+	}
+	texts := map[string]*decl{}
+	for _, d := range u.decls {
+		for _, name := range declared(d.node) {
+			texts[name] = d
+		}
+	}
+	for name, o := range u.objects {
+		if e := in.names[name]; e != nil {
+			if _, isType := e.obj.(*types.TypeName); !isType {
+				delete(in.slots, e.obj)
+			}
+		}
+		delete(in.imports, name)
+		in.names[name] = &entry{obj: o, cell: u.src.n, decl: texts[name]}
+	}
+	for o, s := range p.slots {
+		in.slots[o] = s
+	}
+}
+
+// Attach makes this session the host of package page.
+func (in *Interpreter) attach() { page.Attach(host{in}) }

@@ -1,0 +1,334 @@
+package cell
+
+import (
+	"fmt"
+	"go/ast"
+	"go/token"
+	"go/types"
+
+	"golang.org/x/tools/go/ast/astutil"
+)
+
+// program is a lowered cell, in the order in which the interpreter must take it.
+type program struct {
+	imports, types, vars, funcs []ast.Decl
+	entry                       string                  // the function of the statements; empty if there are none
+	slots                       map[types.Object]string // the interpreter's names of the new objects
+	shown                       []types.Type            // static types of the last expression's values; nil if it has none
+	printed                     bool                    // the last expression is a print, whose count is not shown
+}
+
+// lowering rewrites the trees of one unit in place.
+type lowering struct {
+	in   *Interpreter
+	u    *unit
+	p    *program
+	bad  []problem
+	used map[string]bool // aliases of packages that this cell imports into the interpreter
+}
+
+// lower rewrites a checked cell into Go that the interpreter runs well.
+func (in *Interpreter) lower(u *unit) (*program, error) {
+	l := &lowering{in: in, u: u, p: &program{slots: map[types.Object]string{}}, used: map[string]bool{}}
+	pos := u.src.fn.Body.Lbrace
+	l.name(pos)
+	for _, d := range u.decls {
+		l.decl(d.node)
+	}
+	l.body(u.src.fn)
+	for _, alias := range sorted(l.used) {
+		l.p.imports = append(l.p.imports, importDecl(pos, alias, l.in.aliasPath[alias]))
+	}
+	if len(l.bad) > 0 {
+		return nil, in.problems(u.src, l.bad)
+	}
+	return l.p, nil
+}
+
+// name gives the new objects their names and declares the variables. A variable that is declared again with the same type
+// keeps its place, so that running a cell again leaves no garbage.
+func (l *lowering) name(pos token.Pos) {
+	for _, name := range sorted(l.u.objects) {
+		switch o := l.u.objects[name].(type) {
+		case *types.TypeName, *types.Func:
+			l.p.slots[o] = l.in.gens.fresh(name)
+		}
+	}
+	for _, v := range l.u.order {
+		if e := l.in.names[v.Name()]; e != nil {
+			if old, ok := e.obj.(*types.Var); ok && types.Identical(old.Type(), v.Type()) {
+				l.p.slots[v] = l.in.slots[old]
+				continue
+			}
+		}
+		slot := l.in.gens.fresh(v.Name())
+		l.p.slots[v] = slot
+		t := l.typeExpr(v.Type(), v.Pos())
+		if t == nil {
+			continue
+		}
+		l.p.vars = append(l.p.vars, &ast.GenDecl{Tok: token.VAR, TokPos: pos, Specs: []ast.Spec{
+			&ast.ValueSpec{Names: []*ast.Ident{{Name: slot, NamePos: pos}}, Type: t},
+		}})
+	}
+}
+
+// slot returns the interpreter's name of a package-level object, or "".
+func (l *lowering) slot(o types.Object) string {
+	if o == nil {
+		return ""
+	}
+	if v := l.u.vars[o]; v != nil {
+		o = v
+	}
+	if s := l.p.slots[o]; s != "" {
+		return s
+	}
+	return l.in.slots[o]
+}
+
+func (l *lowering) fail(pos token.Pos, format string, args ...any) {
+	l.bad = append(l.bad, problem{pos, fmt.Sprintf(format, args...)})
+}
+
+// decl lowers one declaration. Constants are folded where they are used, so their declarations vanish.
+func (l *lowering) decl(d ast.Decl) {
+	switch d := d.(type) {
+	case *ast.GenDecl:
+		if d.Tok == token.TYPE {
+			l.rewrite(d)
+			l.p.types = append(l.p.types, d)
+		}
+	case *ast.FuncDecl:
+		if d.Body == nil {
+			l.fail(d.Pos(), "func %s has no body", d.Name.Name)
+			return
+		}
+		l.rewrite(d)
+		l.p.funcs = append(l.p.funcs, d)
+	}
+}
+
+// body lowers the cell's statements: what they declare is assigned, and the last expression is shown.
+func (l *lowering) body(fn *ast.FuncDecl) {
+	if len(fn.Body.List) == 0 {
+		return
+	}
+	if l.u.last != nil {
+		l.show(fn)
+	}
+	var list []ast.Stmt
+	for _, s := range fn.Body.List {
+		list = append(list, l.statement(s)...)
+	}
+	fn.Body.List = list
+	l.rewrite(fn.Body)
+	l.p.entry = l.in.gens.fresh(kernel + "cell")
+	fn.Name.Name = l.p.entry
+	l.p.funcs = append(l.p.funcs, fn)
+}
+
+// statement turns a top-level declaration of variables into assignments.
+func (l *lowering) statement(s ast.Stmt) []ast.Stmt {
+	switch s := s.(type) {
+	case *ast.LabeledStmt:
+		if list := l.statement(s.Stmt); len(list) == 1 {
+			s.Stmt = list[0]
+		} else {
+			s.Stmt = &ast.BlockStmt{Lbrace: s.Stmt.Pos(), List: list, Rbrace: s.Stmt.End()}
+		}
+	case *ast.AssignStmt:
+		if s.Tok == token.DEFINE {
+			s.Tok = token.ASSIGN
+		}
+	case *ast.DeclStmt:
+		g, ok := s.Decl.(*ast.GenDecl)
+		if !ok || g.Tok != token.VAR {
+			break
+		}
+		var list []ast.Stmt
+		for _, sp := range g.Specs {
+			v := sp.(*ast.ValueSpec)
+			as := &ast.AssignStmt{Tok: token.ASSIGN, TokPos: v.Pos(), Rhs: v.Values}
+			for _, id := range v.Names {
+				if len(v.Values) == 0 && id.Name == "_" {
+					continue
+				}
+				as.Lhs = append(as.Lhs, id)
+				if len(v.Values) == 0 {
+					as.Rhs = append(as.Rhs, l.zero(l.u.info.Defs[id].Type(), id.Pos()))
+				}
+			}
+			if len(as.Lhs) > 0 {
+				list = append(list, as)
+			}
+		}
+		return list
+	}
+	return []ast.Stmt{s}
+}
+
+// show wraps the last expression.
+func (l *lowering) show(fn *ast.FuncDecl) {
+	s := fn.Body.List[len(fn.Body.List)-1].(*ast.ExprStmt)
+	switch t := l.u.info.Types[s.X].Type.(type) {
+	case *types.Tuple:
+		for v := range t.Variables() {
+			l.p.shown = append(l.p.shown, v.Type())
+		}
+	default:
+		l.p.shown = []types.Type{types.Default(t)}
+	}
+	l.p.printed = l.prints(s.X)
+	s.X = l.hook("Show", s.X.Pos(), s.X)
+}
+
+// hook is a call of this package from a lowered cell.
+func (l *lowering) hook(name string, pos token.Pos, args ...ast.Expr) *ast.CallExpr {
+	return &ast.CallExpr{
+		Fun:    &ast.SelectorExpr{X: &ast.Ident{Name: kernel, NamePos: pos}, Sel: &ast.Ident{Name: name, NamePos: pos}},
+		Lparen: pos, Args: args, Rparen: pos,
+	}
+}
+
+// prints reports whether a call is one of a function or method of fmt, io, os, bufio or log that returns the count of bytes
+// and an error.
+func (l *lowering) prints(x ast.Expr) bool {
+	call, ok := ast.Unparen(x).(*ast.CallExpr)
+	if !ok {
+		return false
+	}
+	t, ok := l.u.info.Types[call].Type.(*types.Tuple)
+	if !ok || t.Len() != 2 || !types.Identical(t.At(0).Type(), types.Typ[types.Int]) || !isError(t.At(1).Type()) {
+		return false
+	}
+	var id *ast.Ident
+	switch f := ast.Unparen(call.Fun).(type) {
+	case *ast.SelectorExpr:
+		id = f.Sel
+	case *ast.Ident:
+		id = f
+	default:
+		return false
+	}
+	o := l.u.info.Uses[id]
+	if o == nil || o.Pkg() == nil {
+		return false
+	}
+	switch o.Pkg().Path() {
+	case "fmt", "io", "os", "bufio", "log":
+		return true
+	}
+	return false
+}
+
+func isError(t types.Type) bool { return types.Identical(t, types.Universe.Lookup("error").Type()) }
+
+// rewrite lowers a tree in place.
+func (l *lowering) rewrite(n ast.Node) {
+	astutil.Apply(n, l.before, l.after)
+}
+
+// before folds constants and renames packages, from the outside in.
+func (l *lowering) before(c *astutil.Cursor) bool {
+	x, ok := c.Node().(ast.Expr)
+	if !ok {
+		return true
+	}
+	if tv, ok := l.u.info.Types[x]; ok && tv.Value != nil {
+		if lit := l.constant(tv.Type, tv.Value, x); lit != nil {
+			if lit != x {
+				c.Replace(lit)
+			}
+			return false
+		}
+	}
+	if s, ok := x.(*ast.SelectorExpr); ok {
+		if id, ok := s.X.(*ast.Ident); ok {
+			if p, ok := l.u.info.Uses[id].(*types.PkgName); ok {
+				l.selector(s, id, p.Imported())
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// selector lowers a name of a package.
+func (l *lowering) selector(s *ast.SelectorExpr, id *ast.Ident, p *types.Package) {
+	if !l.in.vm.has(p.Path(), s.Sel.Name) {
+		l.fail(s.Pos(), "%s.%s is Go, but cells cannot use it: the interpreter has no %s", p.Name(), s.Sel.Name, s.Sel.Name)
+		return
+	}
+	id.Name = l.alias(p)
+}
+
+// alias returns the name under which the interpreter has imported a package: one for each, whatever cells call it.
+func (l *lowering) alias(p *types.Package) string {
+	a, ok := l.in.aliases[p.Path()]
+	if !ok {
+		a = l.in.gens.fresh("p")
+		l.in.aliases[p.Path()], l.in.aliasPath[a] = a, p.Path()
+	}
+	if !l.in.imported[a] {
+		l.used[a] = true
+	}
+	return a
+}
+
+func importDecl(pos token.Pos, name, path string) ast.Decl {
+	return &ast.GenDecl{Tok: token.IMPORT, TokPos: pos, Specs: []ast.Spec{&ast.ImportSpec{
+		Name: &ast.Ident{Name: name, NamePos: pos}, Path: &ast.BasicLit{Kind: token.STRING, ValuePos: pos, Value: fmt.Sprintf("%q", path)},
+	}}}
+}
+
+// after renames, from the inside out, and replaces what the interpreter does otherwise than Go.
+func (l *lowering) after(c *astutil.Cursor) bool {
+	switch n := c.Node().(type) {
+	case *ast.Ident:
+		l.rename(n)
+	case *ast.CallExpr:
+		if id, ok := n.Fun.(*ast.Ident); ok && l.u.info.Uses[id] == types.Universe.Lookup("recover") {
+			c.Replace(l.hook("Recover", n.Pos(), n))
+		}
+	}
+	return true
+}
+
+func (l *lowering) rename(id *ast.Ident) {
+	o := l.u.info.Uses[id]
+	if o == nil {
+		o = l.u.info.Defs[id]
+	}
+	if o == nil {
+		return
+	}
+	if s := l.slot(o); s != "" {
+		id.Name = s
+		return
+	}
+	v, ok := o.(*types.Var)
+	if !ok {
+		return
+	}
+	switch {
+	case v.IsField() && v.Embedded():
+		// The field of an embedded type has the type's name, also the new one.
+		if s := l.slot(typeName(v.Type())); s != "" {
+			id.Name = s
+		}
+	case !v.IsField() && types.Universe.Lookup(id.Name) != nil:
+		id.Name += mark + "0" // a local variable called len or string
+	}
+}
+
+// typeName returns the object of a named type or of a pointer to one, or nil.
+func typeName(t types.Type) types.Object {
+	if p, ok := t.(*types.Pointer); ok {
+		t = p.Elem()
+	}
+	if n, ok := t.(*types.Named); ok {
+		return n.Obj()
+	}
+	return nil
+}

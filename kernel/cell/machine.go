@@ -1,0 +1,120 @@
+package cell
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"go/ast"
+	"io"
+	"reflect"
+	"strings"
+	"sync/atomic"
+	"unsafe"
+
+	"github.com/traefik/yaegi/interp"
+	"github.com/traefik/yaegi/stdlib"
+
+	"linewright/kernel/cell/symbols"
+)
+
+// machine is yaegi with the two private fields that interrupts need: the run id, which every interpreted frame compares
+// before each step, and the channel that wakes its blocked channel operations.
+//
+// yaegi's own EvalWithContext replaces that channel in every run, so that a channel operation in a closure of an earlier
+// cell could not be stopped, and it never takes the run id back, so that after a stop every earlier closure returns zero
+// values. Here the channel is made once and never closed, and the id is restored when what was to stop has stopped.
+type machine struct {
+	yaegi *interp.Interpreter
+	id    *uint64
+	done  chan struct{}
+}
+
+func newMachine(stdout, stderr io.Writer, hooks interp.Exports) (*machine, error) {
+	y := interp.New(interp.Options{Stdin: strings.NewReader(""), Stdout: stdout, Stderr: stderr, Unrestricted: true})
+	for _, table := range []interp.Exports{stdlib.Symbols, symbols.Symbols, hooks} {
+		if err := y.Use(table); err != nil {
+			return nil, fmt.Errorf("cell: loading symbols: %w", err)
+		}
+	}
+	// Makes the channel, and makes channel operations that are compiled later look at it.
+	if _, err := y.EvalWithContext(context.Background(), "0"); err != nil {
+		return nil, fmt.Errorf("cell: starting the interpreter: %w", err)
+	}
+	m := &machine{yaegi: y}
+	id, err := field[uint64](y, "id")
+	if err != nil {
+		return nil, err
+	}
+	done, err := field[chan struct{}](y, "done")
+	if err != nil {
+		return nil, err
+	}
+	m.id, m.done = id, *done
+	return m, nil
+}
+
+// field returns the address of a private field of the pinned yaegi.
+func field[T any](y *interp.Interpreter, name string) (*T, error) {
+	f, ok := reflect.TypeFor[interp.Interpreter]().FieldByName(name)
+	if !ok || f.Type != reflect.TypeFor[T]() {
+		return nil, fmt.Errorf("cell: this yaegi has no field %s of type %v; the pinned version is v0.16.1", name, reflect.TypeFor[T]())
+	}
+	return (*T)(unsafe.Add(unsafe.Pointer(y), f.Offset)), nil
+}
+
+// stop makes all interpreted code return at its next step. It returns the id to restore.
+func (m *machine) stop() (old uint64) { return atomic.AddUint64(m.id, 1) - 1 }
+
+// restore lets the closures of the run id old work again.
+func (m *machine) restore(old uint64) { atomic.StoreUint64(m.id, old) }
+
+// wake ends the channel operations that are blocked now.
+func (m *machine) wake() {
+	for {
+		select {
+		case m.done <- struct{}{}:
+		default:
+			return
+		}
+	}
+}
+
+// compile compiles declarations and executes them. Nothing of the cell's own code runs here, except the values of
+// declarations that the lowering makes.
+func (m *machine) declare(decls []ast.Decl) error {
+	if len(decls) == 0 {
+		return nil
+	}
+	p, err := m.compile(&ast.File{Name: ast.NewIdent("main"), Package: decls[0].Pos(), Decls: decls})
+	if err != nil {
+		return err
+	}
+	_, err = m.yaegi.Execute(p)
+	return err
+}
+
+// compile is CompileAST with its panics as errors.
+func (m *machine) compile(n ast.Node) (p *interp.Program, err error) {
+	defer func() {
+		if r := recover(); r != nil {
+			err = fmt.Errorf("the interpreter cannot compile this: %v", r)
+		}
+	}()
+	p, err = m.yaegi.CompileAST(n)
+	if err == nil && p == nil {
+		err = errors.New("the interpreter made nothing of this")
+	}
+	return p, err
+}
+
+// call runs the function of that name, which has no parameters, and returns its panic.
+func (m *machine) call(name string) error {
+	_, err := m.yaegi.Eval(name + "()")
+	return err
+}
+
+// has reports whether the symbol tables have the name of that package.
+func (m *machine) has(path, name string) bool {
+	_, ok := m.yaegi.Symbols(path)[path][name]
+	return ok
+}
