@@ -60,3 +60,21 @@ func fakes(load float64) []density {
 		fake{"biphase-L (1 = high-low)", 2 * rate, load, func(nu float64) float64 { return 4 * v * sinc2(nu) * math.Pow(math.Sin(math.Pi*nu), 2) }, nil},
 	}
 }
+
+// marks is an encoder that alternates its marks, one symbol a bit.
+type marks struct{}
+
+func (marks) Name() string                { return "alternate marks" }
+func (marks) Levels() []float64           { return []float64{-1, 0, 1} }
+func (marks) FixedRate() (int, int, bool) { return 1, 1, true }
+func (marks) Bits() int                   { return 1 }
+func (marks) Encode(bits []byte) (out []float64, err error) {
+	v := 1.0
+	for _, b := range bits {
+		out = append(out, v*float64(b))
+		if b == 1 {
+			v = -v
+		}
+	}
+	return out, nil
+}

@@ -329,11 +329,19 @@ func forTerminal(p plot.Plot) (plot.Plot, string) {
 		s.Handler = h
 	}
 	p.Title.Padding, p.X.Label.Padding, p.Y.Label.Padding = 0, 0, 0
-	p.X.Tick.Length, p.Y.Tick.Length = 0, 0
+	p.X.Tick.Length, p.Y.Tick.Length = cellHeight/4, 0
+	p.X.Tick.Marker = labelled{p.X.Tick.Marker}
 	p.X.Padding, p.Y.Padding = cellHeight, cellWidth
 	label := p.Y.Label.Text
 	p.Y.Label.Text = ""
 	return p, label
+}
+
+// labelled leaves out the unlabelled ticks, for which a row of characters has no room.
+type labelled struct{ plot.Ticker }
+
+func (l labelled) Ticks(lo, hi float64) []plot.Tick {
+	return slices.DeleteFunc(slices.Clone(l.Ticker.Ticks(lo, hi)), plot.Tick.IsMinor)
 }
 
 // characters is a text handler that measures text in the cells of a terminal.
