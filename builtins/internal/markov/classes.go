@@ -134,7 +134,7 @@ func (g *Graph) Period() (d int, class []int) {
 				queue = append(queue, int(t))
 				continue
 			}
-			d = gcd(d, class[s]+1-class[t])
+			d = GCD(d, class[s]+1-class[t])
 		}
 	}
 	if d > 0 {
@@ -145,7 +145,8 @@ func (g *Graph) Period() (d int, class []int) {
 	return d, class
 }
 
-func gcd(a, b int) int {
+// GCD returns the greatest common divisor of a and b, which may have any sign; that of 0 and n is the magnitude of n.
+func GCD(a, b int) int {
 	for b != 0 {
 		a, b = b, a%b
 	}

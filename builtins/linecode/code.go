@@ -1,0 +1,60 @@
+package linecode
+
+import (
+	"slices"
+	"sync"
+
+	"linewright/builtins/source"
+)
+
+// A Code is a line code together with the data that feed it.
+type Code struct {
+	name      string
+	reference string
+	machine   *machine
+	lsbFirst  bool
+	data      source.Model
+
+	mu    sync.Mutex
+	joint *Chain // guarded by mu; nil until asked for
+}
+
+// Name returns the code's name.
+func (c *Code) Name() string { return c.name }
+
+// String returns the code's name.
+func (c *Code) String() string { return c.name }
+
+// Reference returns the standard or paper that defines a code of the catalogue, with the convention taken where they
+// leave one open; "" for a scripted code.
+func (c *Code) Reference() string { return c.reference }
+
+// Bits returns the number of source bits per word.
+func (c *Code) Bits() int { return c.machine.bits }
+
+// States returns the number of states that can be reached from the start, start-up states too.
+func (c *Code) States() int { return c.machine.states }
+
+// Levels returns the levels that the code's symbols can have, in rising order, without a unit.
+func (c *Code) Levels() []float64 { return slices.Clone(c.machine.levels) }
+
+// Delay returns the number of symbols that leave the encoder before the first bit's own, and that [Code.Encode] leaves
+// out.
+func (c *Code) Delay() int { return c.machine.delay }
+
+// Source returns the model of the data that feed the code: equiprobable bits unless [Code.Fed] said otherwise.
+func (c *Code) Source() source.Model { return c.data }
+
+// Fed returns the same code fed other data.
+func (c *Code) Fed(data source.Model) *Code {
+	return &Code{name: c.name, reference: c.reference, machine: c.machine, lsbFirst: c.lsbFirst, data: data}
+}
+
+// LSBFirst returns the same code with the first bit in time in the least significant place of each word, for standards
+// that send octets that way. A code that already is so is returned as it is.
+func (c *Code) LSBFirst() *Code {
+	if c.lsbFirst || c.machine.bits == 1 {
+		return c
+	}
+	return &Code{name: c.name + ", LSB first", reference: c.reference, machine: c.machine.reversed(), lsbFirst: true, data: c.data}
+}
