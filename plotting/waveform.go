@@ -20,6 +20,8 @@ import (
 const (
 	mostSamples = 1 << 16 // of a waveform
 	mostWords   = 500     // whose bits a figure tries to write
+
+	waveformHeight = 210 * vg.Length(1)
 )
 
 // Waveform draws the voltage that a train makes of a code's symbols for the given source bits, over time from the start
@@ -61,6 +63,7 @@ func newWaveform(c coder, t pulse.Train, bits []byte) *Figure {
 	v.style = seriesStyle(0)
 
 	f := Of(newPlot())
+	f.Height = waveformHeight
 	p := f.Plot
 	p.Title.Text = c.Name()
 	symbol, factor := prefix(float64(len(symbols))*period, 1)
