@@ -1,0 +1,283 @@
+package spectrum
+
+import (
+	"context"
+	"fmt"
+	"math"
+)
+
+// Costs in nanoseconds, measured on one core of the kind of machine that this was written on. They only choose between
+// routes.
+const (
+	lagCost  = 0.5 // one lag at one frequency
+	rankCost = 3.0 // one product of the triangular solve at one frequency
+	points   = 1001
+)
+
+// Limits of the routes: products of the recursion that are spent before long memories are tried as a resolvent of any
+// rank, products that are spent at all, lags that are kept, the rank of a resolvent, and the numbers in its basis.
+const (
+	easyWork = 3e8
+	hardWork = 2e10
+	mostLags = 1 << 21
+	mostRank = 1500
+	mostCell = 3e7
+)
+
+// spectral computes the form of a process; at least the first lags of it as lags.
+//
+// With f_k[s] the mean of the vector at position k of a step that leaves state s, u_i[s] the probability-weighted
+// vector at position i of the steps that enter s, and K the matrix of a step on functions of the state that have mean 0
+// on every cyclic class (K = P - P Pi: all its eigenvalues lie within the unit circle, whatever the period),
+//
+//	N R(l) = [sum over positions of one step]           for l < N,
+//	N R(N (q+1) + k - i) += u_i . K^q f_k               for q = 0, 1, ... and all positions i, k.
+//
+// The maximum of |K^q f| never grows, and the sum ends when what is left is below the last digits. If it does not end
+// soon, the functions K^q f by then live on a few slow directions, and a resolvent on these takes the rest.
+func (p *process) spectral(ctx context.Context, first int) (*form, error) {
+	a := newAutocorr(p)
+	check := 64
+	for q := 0; ; q++ {
+		if err := ctx.Err(); err != nil {
+			return nil, context.Cause(ctx)
+		}
+		lags := q * p.length
+		bound := a.bound()
+		if lags >= first {
+			if bound*float64(q+8) <= 1e-17*a.power() {
+				return newForm(p.width, a.trim(), nil), nil
+			}
+			if lags >= check {
+				check = 2 * lags
+				rest, err := a.resolve(ctx, q, bound)
+				if err != nil || rest != nil {
+					return newForm(p.width, a.lags, rest), err
+				}
+			}
+		}
+		if lags > mostLags || a.work > hardWork {
+			return nil, fmt.Errorf("spectrum: a machine of %d states and %d edges is too large for either route: its memory is longer than %d symbols, and the slow part of it has a rank above %d",
+				p.machine.states, len(p.machine.edges), lags, a.rank())
+		}
+		a.step(q)
+	}
+}
+
+// An autocorr is the state of the recursion.
+type autocorr struct {
+	p     *process
+	f     [][]float64 // f[k*width+j] = K^q f of position k and component j; nil if zero
+	u     [][]float64 // u[i*width+j]
+	size  float64     // sum of |u|
+	lags  [][]float64 // lags[i*width+j][l]
+	next  []float64
+	step1 sparse
+	work  float64 // products so far
+	tried float64 // bound at the last attempt to resolve
+	at    int     // and the step of it
+	large bool    // a resolvent of any rank was tried
+}
+
+func newAutocorr(p *process) *autocorr {
+	m, w, row := p.machine, p.width, p.length*p.width
+	a := &autocorr{p: p, lags: make([][]float64, w*w), next: make([]float64, m.states)}
+	a.f, a.u = vectors(row, m.states), vectors(row, m.states)
+	for i := range a.lags {
+		a.lags[i] = make([]float64, 2*p.length)
+	}
+	scale := 0.0
+	for i, e := range m.edges {
+		mass := p.pi[e.from] * e.p
+		out := p.out[i*row : (i+1)*row]
+		for n, v := range out {
+			a.f[n][e.from] += e.p * v
+			a.u[n][e.to] += mass * v
+			scale = max(scale, math.Abs(v))
+		}
+		for n, v := range out {
+			if v == 0 {
+				continue
+			}
+			v *= mass
+			k, j := n/w, n%w
+			for n2 := k * w; n2 < row; n2++ {
+				a.lags[j*w+n2%w][n2/w-k] += v * out[n2]
+			}
+		}
+	}
+	for i := range a.lags {
+		for l := range a.lags[i] {
+			a.lags[i][l] /= float64(p.length)
+		}
+	}
+	for n := range a.f {
+		if top := largest(a.f[n]); top <= 1e-15*scale {
+			a.f[n] = nil
+		}
+		for s, v := range a.u[n] {
+			a.u[n][s] = v / float64(p.length)
+			a.size += math.Abs(v)
+		}
+	}
+	a.step1 = newSparse(p)
+	return a
+}
+
+func vectors(n, size int) [][]float64 {
+	all := make([]float64, n*size)
+	v := make([][]float64, n)
+	for i := range v {
+		v[i] = all[i*size : (i+1)*size : (i+1)*size]
+	}
+	return v
+}
+
+func largest(v []float64) float64 {
+	top := 0.0
+	for _, x := range v {
+		top = max(top, math.Abs(x))
+	}
+	return top
+}
+
+// power is the sum of the mean squares.
+func (a *autocorr) power() float64 {
+	sum := 0.0
+	for i := range a.p.width {
+		sum += a.lags[i*a.p.width+i][0]
+	}
+	return sum
+}
+
+// bound is a bound of every lag that the next step would add.
+func (a *autocorr) bound() float64 {
+	top := 0.0
+	for _, f := range a.f {
+		top = max(top, largest(f))
+	}
+	return top * a.size
+}
+
+// step adds the lags of step q and goes on to q+1.
+func (a *autocorr) step(q int) {
+	p, w := a.p, a.p.width
+	for i := range a.lags {
+		for len(a.lags[i]) < p.length*(q+2) {
+			a.lags[i] = append(a.lags[i], 0)
+		}
+	}
+	for n, f := range a.f {
+		if f == nil {
+			continue
+		}
+		k, j := n/w, n%w
+		for m, u := range a.u {
+			i := m / w
+			sum := 0.0
+			for s, v := range f {
+				sum += u[s] * v
+			}
+			a.lags[m%w*w+j][p.length*(q+1)+k-i] += sum
+		}
+		a.step1.apply(a.next, f)
+		a.f[n], a.next = a.next, f
+		a.work += float64(len(a.step1.to) + len(a.u)*len(f))
+	}
+}
+
+// trim drops lags at the end that are too small to matter.
+func (a *autocorr) trim() [][]float64 {
+	least := 1e-18 * a.power()
+	n := 1
+	for _, lags := range a.lags {
+		for l, r := range lags {
+			if math.Abs(r) > least {
+				n = max(n, l+1)
+			}
+		}
+	}
+	for i := range a.lags {
+		a.lags[i] = a.lags[i][:n]
+	}
+	return a.lags
+}
+
+// rank is the largest rank that a resolvent of this machine may have.
+func (a *autocorr) rank() int {
+	return min(a.p.machine.states, mostRank, int(mostCell)/a.p.machine.states)
+}
+
+// resolve tries to end the sum after q steps with a resolvent, if that is cheaper than what the decay since the last
+// attempt lets expect of going on; it returns nil if not.
+func (a *autocorr) resolve(ctx context.Context, q int, bound float64) (*resolvent, error) {
+	rank := 0
+	if a.tried > 0 {
+		rate := math.Log(a.tried/bound) / float64(q-a.at)
+		left := math.Log(bound/(1e-17*a.power())) / max(rate, 1e-9) * float64(a.p.length)
+		rank = int(math.Sqrt(left * lagCost / rankCost))
+	}
+	a.tried, a.at = bound, q
+	if a.work > easyWork && !a.large {
+		a.large = true
+		rank = mostRank
+	}
+	rank = min(rank, a.rank())
+	if rank < 2 {
+		return nil, nil
+	}
+	return newResolvent(ctx, a, q, rank)
+}
+
+// A sparse is the matrix K of one step on functions of the state, edges of the same ends added up.
+type sparse struct {
+	p    *process
+	head []int32
+	to   []int32
+	v    []float64
+	mean []float64
+	work []float64
+}
+
+func newSparse(p *process) sparse {
+	n := p.machine.states
+	k := sparse{p: p, head: make([]int32, n+1), mean: make([]float64, p.period), work: make([]float64, n)}
+	at := make([]int32, n) // 1 + place of a target in the row at hand
+	for s := range n {
+		lo := len(k.to)
+		to, prob := p.graph.Row(s)
+		for i, t := range to {
+			if at[t] > int32(lo) {
+				k.v[at[t]-1] += prob[i]
+				continue
+			}
+			k.to = append(k.to, t)
+			k.v = append(k.v, prob[i])
+			at[t] = int32(len(k.to))
+		}
+		k.head[s+1] = int32(len(k.to))
+	}
+	return k
+}
+
+// apply sets dst to K v. Taking the means off first keeps rounding from feeding the directions that K does not have.
+func (k *sparse) apply(dst, v []float64) {
+	p := k.p
+	clear(k.mean)
+	for s, x := range v {
+		k.mean[p.cyc[s]] += p.pi[s] * x
+	}
+	for s, x := range v {
+		k.work[s] = x - float64(p.period)*k.mean[p.cyc[s]]
+	}
+	lo := k.head[0]
+	for s := range dst {
+		hi := k.head[s+1]
+		sum := 0.0
+		for i := lo; i < hi; i++ {
+			sum += k.v[i] * k.work[k.to[i]]
+		}
+		dst[s] = sum
+		lo = hi
+	}
+}

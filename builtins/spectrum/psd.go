@@ -1,0 +1,368 @@
+package spectrum
+
+import (
+	"context"
+	"fmt"
+	"math"
+	"strings"
+	"sync"
+
+	"linewright/builtins/linecode"
+	"linewright/builtins/page"
+	"linewright/builtins/pulse"
+)
+
+// A PSD is the exact power spectrum of a coded pulse train: a one-sided continuous density in V^2/Hz and tones in V^2.
+// It does not change once it is made and may be used from several goroutines.
+type PSD struct {
+	name  string
+	drive *pulse.Drive
+	basis []pulse.Shape // what all waveforms are sums of
+	parts []part        // one for each closed class
+	total float64       // V^2
+
+	planned sync.Mutex
+	plan    *plan // for integrals, made when first asked for
+}
+
+// A part is the spectrum of one closed class, in units of the drive's volts, squared, and of the symbol period.
+type part struct {
+	prob   float64 // of ending there
+	tones  *comb
+	form   *form // of the basis coefficients; nil if they have no continuous part
+	near   *null // nil if the density does not vanish at 0 Hz
+	square float64
+}
+
+// A Class is one of several closed classes that the data can end in.
+type Class struct {
+	Probability float64 // of ending there
+	Spectrum    *PSD    // of a waveform that did
+}
+
+// Exact returns the exact spectrum of a code, fed as it is, sent by a train. It is an error if the train does not fit the
+// code (pulse.Train.Drive), and if the machine is too large for the method; the message has the sizes.
+//
+// Where the data can end in one of several closed classes, density and tones are averaged with the probabilities of
+// ending there, and [PSD.Classes] gives each.
+func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
+	d, err := t.Drive(c)
+	if err != nil {
+		return nil, err
+	}
+	return exact(page.Context(), c.Chain(), d)
+}
+
+// OfChain is [Exact] for a chain that is given edge by edge.
+func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
+	if err := check(ch); err != nil {
+		return nil, err
+	}
+	d, err := t.Drive(coder{ch})
+	if err != nil {
+		return nil, err
+	}
+	return exact(page.Context(), ch, d)
+}
+
+func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
+	m, shapes, err := read(ctx, ch, d)
+	if err != nil {
+		return nil, err
+	}
+	p := &PSD{name: ch.Name, drive: d}
+	var coef [][]float64
+	if p.basis, coef, err = waveforms(shapes); err != nil {
+		return nil, err
+	}
+	parts, prob, err := m.closed(ctx)
+	if err != nil {
+		return nil, err
+	}
+	for i, m := range parts {
+		part, err := p.class(ctx, m, coef)
+		if err != nil {
+			return nil, err
+		}
+		part.prob = prob[i]
+		p.parts = append(p.parts, *part)
+		p.total += part.prob * part.square * p.volts2()
+	}
+	return p, nil
+}
+
+// mostSymbols is the longest support of a waveform, in symbols.
+const mostSymbols = 1 << 16
+
+// waveforms expresses the shapes of symbols through few of them; several are brought to energy 1.
+func waveforms(shapes []pulse.Shape) (basis []pulse.Shape, coef [][]float64, err error) {
+	basis, coef = pulse.Basis(shapes)
+	for _, s := range basis {
+		if from, to := s.Support(); to-from > mostSymbols {
+			return nil, nil, fmt.Errorf("spectrum: a pulse from %v to %v symbols is too long; the limit is %d symbols", from, to, mostSymbols)
+		}
+	}
+	switch len(basis) {
+	case 0: // nothing but zero: any shape will do
+		basis = []pulse.Shape{pulse.Rect(1)}
+		for i := range coef {
+			coef[i] = []float64{0}
+		}
+	case 1:
+	default:
+		for j, s := range basis {
+			size := math.Sqrt(s.Overlap(s, 0))
+			basis[j] = pulse.Scaled(s, 1/size)
+			for i := range coef {
+				coef[i][j] *= size
+			}
+		}
+	}
+	return basis, coef, nil
+}
+
+// class computes the spectrum of one closed class.
+func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, error) {
+	width := len(p.basis)
+	far := 1.0 // symbols that a waveform may overlap
+	for _, a := range p.basis {
+		for _, b := range p.basis {
+			from, _ := a.Support()
+			_, to := b.Support()
+			far = max(far, to-from)
+		}
+	}
+	lags := int(math.Ceil(far))
+	if len(m.edges) == m.states {
+		return p.periodic(ctx, m, coef, lags)
+	}
+	m, length, err := m.level(ctx)
+	if err != nil {
+		return nil, err
+	}
+	if m, err = m.lump(ctx); err != nil {
+		return nil, err
+	}
+	law, err := newLaw(ctx, m, length)
+	if err != nil {
+		return nil, fmt.Errorf("spectrum: %w", err)
+	}
+	symbols := law.symbols(width, coef)
+	out := &part{}
+	if out.tones, err = symbols.means(ctx, lags); err != nil {
+		return nil, err
+	}
+	scale := symbols.variance()
+	for j := range width {
+		scale += out.tones.power[(j*width+j)*lags]
+	}
+	if !symbols.zero(scale) {
+		if out.form, err = symbols.spectral(ctx, lags); err != nil {
+			return nil, err
+		}
+		if out.near, err = nearNull(ctx, symbols, p.basis, scale); err != nil {
+			return nil, err
+		}
+	}
+	out.square = p.square(out, lags)
+	return out, nil
+}
+
+// square is the mean square of the waveform from the time domain: with P_ij(l) the mean of c_i(n) c_j(n+l) and O_ij(l)
+// the overlap of basis shape i with basis shape j that comes l symbols later,
+//
+//	sum over i, j of P_ij(0) O_ij(0) + 2 sum over l > 0 of P_ij(l) O_ij(l).
+func (p *PSD) square(c *part, lags int) float64 {
+	w := len(p.basis)
+	sum := 0.0
+	for i, a := range p.basis {
+		for j, b := range p.basis {
+			for l := range lags {
+				both := c.tones.power[(i*w+j)*lags+l]
+				if c.form != nil {
+					if r := c.form.lags[i*w+j]; l < len(r) {
+						both += r[l]
+					}
+				}
+				if l > 0 {
+					both *= 2
+				}
+				if both != 0 {
+					sum += both * a.Overlap(b, float64(l))
+				}
+			}
+		}
+	}
+	return max(sum, 0)
+}
+
+func (p *PSD) volts2() float64 { return p.drive.Volts * p.drive.Volts }
+
+// Name returns the name of the code and its data.
+func (p *PSD) Name() string { return p.name }
+
+// SymbolRate returns the rate of symbols in Hz.
+func (p *PSD) SymbolRate() float64 { return p.drive.SymbolRate }
+
+// Load returns the load in ohms, 0 if the train does not state one.
+func (p *PSD) Load() float64 { return p.drive.Load }
+
+// Total returns the mean square of the waveform in V^2. It comes from the time domain.
+func (p *PSD) Total() float64 { return p.total }
+
+// Classes returns the closed classes that the data can end in, with the probability and the spectrum of each; nil if
+// there is one class only. The PSD itself is their average.
+func (p *PSD) Classes() []Class {
+	if len(p.parts) == 1 {
+		return nil
+	}
+	classes := make([]Class, len(p.parts))
+	for i, c := range p.parts {
+		prob := c.prob
+		c.prob = 1
+		classes[i] = Class{prob, &PSD{
+			name:  fmt.Sprintf("%s, class %d of %d", p.name, i+1, len(p.parts)),
+			drive: p.drive, basis: p.basis, parts: []part{c}, total: c.square * p.volts2(),
+		}}
+	}
+	return classes
+}
+
+// At returns the continuous density at f Hz in V^2/Hz, one-sided. At(0) is its limit. It panics unless f is finite and
+// at least 0.
+func (p *PSD) At(f float64) float64 {
+	return p.Density(nil, []float64{f})[0]
+}
+
+// Density sets dst[i] to the continuous density at f[i] Hz in V^2/Hz, one-sided, and returns dst; a nil dst is
+// allocated. It panics if an f is not finite or below 0, and if dst has another length.
+func (p *PSD) Density(dst, f []float64) []float64 {
+	if dst == nil {
+		dst = make([]float64, len(f))
+	}
+	if len(dst) != len(f) {
+		panic(fmt.Errorf("spectrum: Density of %d frequencies into %d values; give as many, or nil", len(f), len(dst)))
+	}
+	for _, x := range f {
+		if !(x >= 0) || math.IsInf(x, 0) {
+			panic(fmt.Errorf("spectrum: density at %v Hz; a frequency is finite and at least 0 (densities are one-sided)", x))
+		}
+	}
+	nu := make([]float64, len(f))
+	for i, x := range f {
+		nu[i] = x / p.drive.SymbolRate
+	}
+	p.evaluate(current(), dst, nu)
+	scale := 2 * p.volts2() / p.drive.SymbolRate
+	for i := range dst {
+		dst[i] *= scale
+	}
+	return dst
+}
+
+// block is the number of frequencies that are evaluated between two looks at the context, unless they are slow.
+const block = 252
+
+// evaluate sets dst to the two-sided density over the squared volts and the symbol period, at nu symbol rates.
+func (p *PSD) evaluate(ctx context.Context, dst, nu []float64) {
+	size := block
+	for _, c := range p.parts {
+		if c.form != nil {
+			size = min(size, 1+int(2e7/c.form.cost()))
+		}
+	}
+	angles := make([]angle, size)
+	work := make([]float64, 2*size)
+	for len(dst) > 0 {
+		stop(ctx)
+		n := min(size, len(dst))
+		p.some(dst[:n], nu[:n], angles[:n], work[:n], work[size:size+n])
+		dst, nu = dst[n:], nu[n:]
+	}
+}
+
+func (p *PSD) some(dst, nu []float64, t []angle, energy, raw []float64) {
+	clear(dst)
+	for i, x := range nu {
+		t[i] = newAngle(x)
+	}
+	if len(p.basis) == 1 {
+		for i, x := range nu {
+			energy[i] = p.basis[0].Energy(x)
+		}
+		for _, c := range p.parts {
+			if c.form == nil {
+				continue
+			}
+			c.form.scalar(raw, t)
+			least := nearPart * c.form.power(0)
+			for i, v := range raw {
+				if v < least && c.near != nil && math.Abs(t[i].nu) < c.near.reach {
+					dst[i] += c.prob * c.near.at(t[i], energy[i])
+				} else {
+					dst[i] += c.prob * max(v, 0) * energy[i]
+				}
+			}
+		}
+		return
+	}
+	h := make([]complex128, len(p.basis))
+	for i, x := range nu {
+		for j := range h {
+			h[j] = p.basis[j].Transform(x)
+		}
+		for _, c := range p.parts {
+			if c.form == nil {
+				continue
+			}
+			v := c.form.at(t[i], h)
+			if c.near != nil && x < c.near.reach {
+				least := 0.0
+				for j := range h {
+					least += nearPart * square(h[j]) * c.form.power(j)
+				}
+				if v < least {
+					v = c.near.at(t[i], 0)
+				}
+			}
+			dst[i] += c.prob * max(v, 0)
+		}
+	}
+}
+
+// String returns a summary of a few lines.
+func (p *PSD) String() string {
+	var b strings.Builder
+	fmt.Fprintf(&b, "spectrum of %s: %.6g symbols/s, mean square %.6g V^2", p.name, p.drive.SymbolRate, p.total)
+	lines := p.Lines(2 * p.drive.SymbolRate)
+	const most = 6
+	switch {
+	case len(lines) == 0:
+		b.WriteString(", no tones up to twice the symbol rate")
+	default:
+		b.WriteString("\ntones:")
+		for i, l := range lines {
+			if i == most {
+				fmt.Fprintf(&b, " and %d more up to twice the symbol rate", len(lines)-most)
+				break
+			}
+			fmt.Fprintf(&b, " %.6g V^2 at %.6g Hz;", l.Power, l.Freq)
+		}
+	}
+	if n := len(p.parts); n > 1 {
+		fmt.Fprintf(&b, "\naverage over %d classes that the data can end in, with probabilities", n)
+		for _, c := range p.parts {
+			fmt.Fprintf(&b, " %.6g", c.prob)
+		}
+	}
+	return b.String()
+}
+
+func current() context.Context { return page.Context() }
+
+// stop fails the cell if it was interrupted.
+func stop(ctx context.Context) {
+	if ctx.Err() != nil {
+		panic(fmt.Errorf("spectrum: interrupted: %w", context.Cause(ctx)))
+	}
+}

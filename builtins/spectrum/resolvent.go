@@ -1,0 +1,279 @@
+package spectrum
+
+import (
+	"context"
+	"math"
+)
+
+// A resolvent is what a process adds to its form beyond the first lags:
+//
+//	2 Re[ z^(q+1) u(h)' (I - z H)^-1 b(h) ],   z = exp(-j t N),
+//
+// where H is K on the subspace that the functions K^q f span under K (W. E. Arnoldi, Quart. Appl. Math. 9 (1951)
+// 17-29), in Hessenberg form. It is regular at every real t. Nothing is diagonalised: shift registers are defective.
+type resolvent struct {
+	width, length int
+	steps         int         // q+1
+	columns       [][]float64 // columns[c][r] = H[r][c] for r <= c+1
+	b, u          [][]float64 // b[k*width+j]: coordinates of K^q f; u likewise of the left vectors
+	work          chan *solveSpace
+}
+
+type solveSpace struct{ b, u, w, a []complex128 }
+
+// newResolvent returns nil if the subspace has more dimensions than rank.
+func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, error) {
+	basis, h, err := a.arnoldi(ctx, rank)
+	if err != nil || basis == nil {
+		return nil, err
+	}
+	r := &resolvent{width: a.p.width, length: a.p.length, steps: q + 1, work: make(chan *solveSpace, 16)}
+	r.b, r.u = coordinates(basis, a.f), coordinates(basis, a.u)
+	if err := hessenberg(ctx, h, r.b, r.u); err != nil {
+		return nil, err
+	}
+	n := len(h)
+	r.columns = vectors(n, n+1)
+	for c := range n {
+		r.columns[c] = r.columns[c][:min(c+2, n)]
+		for row := range r.columns[c] {
+			r.columns[c][row] = h[row][c]
+		}
+	}
+	return r, nil
+}
+
+// arnoldi returns an orthonormal basis of the smallest subspace that holds the functions f and is mapped into itself by
+// K, and the matrix of K on it; nil if it has more than rank dimensions.
+//
+// A direction is new if what the others leave of it is more than rounding, and if it can still reach the result: weight
+// is the product of the remainders on the way to it.
+func (a *autocorr) arnoldi(ctx context.Context, rank int) (basis, h [][]float64, err error) {
+	scale := 0.0
+	for _, f := range a.f {
+		scale = max(scale, norm(f))
+	}
+	var weight []float64
+	// orthogonalise takes from v its parts along the basis, twice for full precision, and makes the rest a new
+	// direction if it is one. It returns the coordinates of v.
+	orthogonalise := func(v []float64, reach float64) []float64 {
+		size := norm(v)
+		c := make([]float64, len(basis), len(basis)+1)
+		for range 2 {
+			for i, e := range basis {
+				d := dot(e, v)
+				c[i] += d
+				for s := range v {
+					v[s] -= d * e[s]
+				}
+			}
+		}
+		left := norm(v)
+		if left <= 1e-14*size || reach*left <= 1e-19*scale {
+			return c
+		}
+		for s := range v {
+			v[s] /= left
+		}
+		basis = append(basis, v)
+		weight = append(weight, reach*left)
+		return append(c, left)
+	}
+	for _, f := range a.f {
+		if f != nil {
+			orthogonalise(append([]float64(nil), f...), 1)
+		}
+	}
+	var columns [][]float64
+	for n := 0; n < len(basis); n++ {
+		if len(basis) > rank {
+			return nil, nil, nil
+		}
+		if ctx.Err() != nil {
+			return nil, nil, context.Cause(ctx)
+		}
+		v := make([]float64, len(a.next))
+		a.step1.apply(v, basis[n])
+		columns = append(columns, orthogonalise(v, weight[n]))
+		a.work += float64(4 * len(basis) * len(v))
+	}
+	h = vectors(len(basis), len(basis))
+	for c, column := range columns {
+		for r, v := range column {
+			h[r][c] = v
+		}
+	}
+	return basis, h, nil
+}
+
+func coordinates(basis, of [][]float64) [][]float64 {
+	c := vectors(len(of), len(basis))
+	for i, v := range of {
+		if v == nil {
+			continue
+		}
+		for n, e := range basis {
+			c[i][n] = dot(e, v)
+		}
+	}
+	return c
+}
+
+func dot(a, b []float64) float64 {
+	sum := 0.0
+	for i, x := range a {
+		sum += x * b[i]
+	}
+	return sum
+}
+
+func norm(v []float64) float64 { return math.Sqrt(dot(v, v)) }
+
+// hessenberg makes h upper Hessenberg by reflections (A. S. Householder 1958; G. H. Golub and C. F. Van Loan, Matrix
+// Computations, algorithm 7.4.2) and turns the vectors along. A subspace that grew from one function is so already.
+func hessenberg(ctx context.Context, h [][]float64, vectors ...[][]float64) error {
+	n := len(h)
+	x := make([]float64, n)
+	for c := 0; c < n-2; c++ {
+		if ctx.Err() != nil {
+			return context.Cause(ctx)
+		}
+		below := 0.0
+		for r := c + 2; r < n; r++ {
+			below = max(below, math.Abs(h[r][c]))
+		}
+		if below == 0 {
+			continue
+		}
+		v := x[c+1:]
+		for r := range v {
+			v[r] = h[c+1+r][c]
+		}
+		v[0] += math.Copysign(norm(v), v[0])
+		size := norm(v)
+		for r := range v {
+			v[r] /= size
+		}
+		reflect := func(row []float64) { // row of n numbers, from the right
+			d := 2 * dot(v, row[c+1:])
+			for r, y := range v {
+				row[c+1+r] -= d * y
+			}
+		}
+		for col := c; col < n; col++ { // from the left
+			d := 0.0
+			for r, y := range v {
+				d += y * h[c+1+r][col]
+			}
+			for r, y := range v {
+				h[c+1+r][col] -= 2 * d * y
+			}
+		}
+		for r := c + 2; r < n; r++ {
+			h[r][c] = 0
+		}
+		for r := range h {
+			reflect(h[r])
+		}
+		for _, set := range vectors {
+			for _, row := range set {
+				reflect(row)
+			}
+		}
+	}
+	return nil
+}
+
+func (r *resolvent) cost() float64 {
+	n := float64(len(r.columns))
+	return 20*n + rankCost*n*n + 4*n*float64(len(r.b))
+}
+
+// at is the resolvent's part of the form for the transforms h.
+//
+// A = I - zH is solved from its last row upward: two neighbouring columns combine so that the row has one entry left,
+// which gives one unknown; the larger entry is the pivot. Neither factor has to be kept.
+func (r *resolvent) at(t angle, h []complex128) float64 {
+	n := len(r.columns)
+	if n == 0 {
+		return 0
+	}
+	var s *solveSpace
+	select {
+	case s = <-r.work:
+	default:
+		s = &solveSpace{make([]complex128, n), make([]complex128, n), make([]complex128, n), make([]complex128, n)}
+	}
+	defer func() {
+		select {
+		case r.work <- s:
+		default:
+		}
+	}()
+	clear(s.b)
+	clear(s.u)
+	for k := range r.length {
+		turn := power(t, -k)
+		for j, hj := range h {
+			right := hj * turn
+			left := complex(real(right), -imag(right))
+			b, u := r.b[k*r.width+j], r.u[k*r.width+j]
+			for i := range n {
+				s.b[i] += complex(real(right)*b[i], imag(right)*b[i])
+				s.u[i] += complex(real(left)*u[i], imag(left)*u[i])
+			}
+		}
+	}
+	z := power(t, -r.length)
+	x := s.solve(r.columns, z)
+	return 2 * real(power(t, -r.length*r.steps)*x)
+}
+
+// solve returns u' (I - zH)^-1 b and uses up b and u.
+func (s *solveSpace) solve(columns [][]float64, z complex128) complex128 {
+	b, u, w, a := s.b, s.u, s.w, s.a
+	n := len(columns)
+	zr, zi := -real(z), -imag(z)
+	for r, v := range columns[n-1] {
+		w[r] = complex(zr*v, zi*v)
+	}
+	w[n-1] += 1
+	left := u[n-1]
+	var sum complex128
+	for i := n - 1; i > 0; i-- {
+		column := columns[i-1][:i+1]
+		tip := complex(zr*column[i], zi*column[i])
+		a := a[:i]
+		for r, v := range column[:i] {
+			a[r] = complex(zr*v, zi*v)
+		}
+		a[i-1] += 1
+		w, b := w[:i+1], b[:i+1]
+		if square(w[i]) >= square(tip) {
+			f, y := tip/w[i], b[i]/w[i]
+			sum += y * left
+			left = u[i-1] - f*left
+			for r, v := range a {
+				b[r] -= y * w[r]
+				w[r] = v - f*w[r]
+			}
+		} else {
+			f, y := w[i]/tip, b[i]/tip
+			sum += y * u[i-1]
+			left -= f * u[i-1]
+			for r, v := range a {
+				b[r] -= y * v
+				w[r] -= f * v
+			}
+		}
+	}
+	return sum + b[0]/w[0]*left
+}
+
+// power is exp(j t k). The product nu k is reduced to a turn with its rounding error, which long memories would feel.
+func power(t angle, k int) complex128 {
+	whole := t.nu * float64(k)
+	turns := whole - math.Round(whole) + math.FMA(t.nu, float64(k), -whole)
+	sin, cos := math.Sincos(2 * math.Pi * turns)
+	return complex(cos, sin)
+}

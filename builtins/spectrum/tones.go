@@ -1,0 +1,182 @@
+package spectrum
+
+import (
+	"cmp"
+	"context"
+	"fmt"
+	"math"
+	"math/bits"
+	"slices"
+)
+
+// A comb is the Fourier series of a vector sequence of some period D on the symbol clock: coef[j][k] is
+// (1/D) sum over n of c_j(n) exp(-2 pi j k n / D) for 0 <= k <= D/2. Tones stand at k/D symbol rates, k kept as a whole
+// number, so that neighbours are never confused by rounding.
+type comb struct {
+	period int
+	coef   [][]complex128
+	power  []float64 // mean of c_i(n) c_j(n+l) at (i*width+j)*(lags) + l
+	lags   int
+}
+
+// mostPeriod is the longest period that is transformed; the work then takes about half a gigabyte.
+const mostPeriod = 12_000_000
+
+// newComb takes sequences of length period, one a component, and keeps their mean products up to lag lags-1.
+func newComb(ctx context.Context, sequences [][]float64, lags int) (*comb, error) {
+	n, w := len(sequences[0]), len(sequences)
+	c := &comb{period: n, power: make([]float64, w*w*lags), lags: lags}
+	for i, x := range sequences {
+		for j, y := range sequences {
+			for l := range lags {
+				if ctx.Err() != nil {
+					return nil, context.Cause(ctx)
+				}
+				sum, at := 0.0, l%n
+				for _, v := range x {
+					sum += v * y[at]
+					if at++; at == n {
+						at = 0
+					}
+				}
+				c.power[(i*w+j)*lags+l] = sum / float64(n)
+			}
+		}
+	}
+	d, err := newDFT(ctx, n)
+	if err != nil {
+		return nil, err
+	}
+	for _, x := range sequences {
+		y := make([]complex128, n)
+		for i, v := range x {
+			y[i] = complex(v/float64(n), 0)
+		}
+		if err := d.transform(ctx, y); err != nil {
+			return nil, err
+		}
+		c.coef = append(c.coef, slices.Clone(y[:n/2+1]))
+	}
+	return c, nil
+}
+
+// means is the comb of the process's mean.
+func (p *process) means(ctx context.Context, lags int) (*comb, error) {
+	n := p.period * p.length
+	sequences := vectors(p.width, n)
+	for i := range n {
+		for j := range sequences {
+			sequences[j][i] = p.mean[i*p.width+j]
+		}
+	}
+	return newComb(ctx, sequences, lags)
+}
+
+// at is the coefficient of component j for any k >= 0: the sequence is real and its series repeats.
+func (c *comb) at(j, k int) complex128 {
+	k %= c.period
+	if 2*k > c.period {
+		v := c.coef[j][c.period-k]
+		return complex(real(v), -imag(v))
+	}
+	return c.coef[j][k]
+}
+
+// tone is the one-sided power of tone k in units of the drive's volts, squared.
+func (p *PSD) tone(c *comb, k int) float64 {
+	nu := float64(k) / float64(c.period)
+	var power float64
+	if len(p.basis) == 1 {
+		power = square(c.at(0, k))
+		if power != 0 {
+			power *= p.basis[0].Energy(nu)
+		}
+	} else {
+		var sum complex128
+		for j := range p.basis {
+			if v := c.at(j, k); v != 0 {
+				sum += v * p.basis[j].Transform(nu)
+			}
+		}
+		power = square(sum)
+	}
+	if k > 0 {
+		power *= 2
+	}
+	return power
+}
+
+// absent is the part of the mean square below which a tone is none.
+const absent = 1e-14
+
+// A fraction is k/D symbol rates in lowest terms.
+type fraction struct{ k, d uint64 }
+
+func (a fraction) compare(b fraction) int {
+	ah, al := bits.Mul64(a.k, b.d)
+	bh, bl := bits.Mul64(b.k, a.d)
+	return cmp.Or(cmp.Compare(ah, bh), cmp.Compare(al, bl))
+}
+
+// frequency is the frequency of tone k of a comb in Hz; it rounds once where k times the symbol rate is exact.
+func (p *PSD) frequency(k, period uint64) float64 {
+	return float64(k) * p.drive.SymbolRate / float64(period)
+}
+
+// each calls f for every tone of a comb with lo <= frequency < hi, in rising order: those that are absent too.
+func (p *PSD) each(ctx context.Context, c *comb, lo, hi float64, f func(k int, power float64)) {
+	first := int(math.Max(0, math.Floor(lo/p.drive.SymbolRate*float64(c.period))-1))
+	for k := first; ; k++ {
+		if k%1024 == 0 {
+			stop(ctx)
+		}
+		switch at := p.frequency(uint64(k), uint64(c.period)); {
+		case at >= hi:
+			return
+		case at >= lo:
+			f(k, p.tone(c, k))
+		}
+	}
+}
+
+// A Line is a tone: a discrete component of a spectrum.
+type Line struct {
+	Freq  float64 // Hz
+	Power float64 // V^2; of the mean, squared, at 0 Hz
+}
+
+// Lines returns the tones from 0 Hz up to and including fmax, in rising frequency. Tones with less than 1e-14 of the
+// mean square are not there: they stand on nulls. It panics unless fmax is finite and at least 0.
+func (p *PSD) Lines(fmax float64) []Line {
+	if !(fmax >= 0) || math.IsInf(fmax, 0) {
+		panic(fmt.Errorf("spectrum: Lines(%v): give the highest frequency in Hz, finite and at least 0", fmax))
+	}
+	ctx := current()
+	least := absent * p.total / p.volts2()
+	type tone struct {
+		fraction
+		power float64
+	}
+	var tones []tone
+	for _, part := range p.parts {
+		if part.tones == nil {
+			continue
+		}
+		p.each(ctx, part.tones, 0, math.Nextafter(fmax, math.Inf(1)), func(k int, power float64) {
+			if power *= part.prob; power > least {
+				g := gcd(k, part.tones.period)
+				tones = append(tones, tone{fraction{uint64(k / g), uint64(part.tones.period / g)}, power})
+			}
+		})
+	}
+	slices.SortStableFunc(tones, func(a, b tone) int { return a.compare(b.fraction) })
+	var lines []Line
+	for i, t := range tones {
+		if i > 0 && t.fraction == tones[i-1].fraction {
+			lines[len(lines)-1].Power += t.power * p.volts2()
+			continue
+		}
+		lines = append(lines, Line{p.frequency(t.k, t.d), t.power * p.volts2()})
+	}
+	return lines
+}
