@@ -86,4 +86,3 @@ func gcd(a, b int) int {
 	}
 	return max(a, -a)
 }
-

@@ -190,10 +190,40 @@ func (r *resolvent) cost() float64 {
 }
 
 // at is the resolvent's part of the form for the transforms h.
-//
-// A = I - zH is solved from its last row upward: two neighbouring columns combine so that the row has one entry left,
-// which gives one unknown; the larger entry is the pivot. Neither factor has to be kept.
 func (r *resolvent) at(t angle, h []complex128) float64 {
+	left := make([]complex128, len(h))
+	for j, v := range h {
+		left[j] = complex(real(v), -imag(v))
+	}
+	return 2 * real(r.value(t, left, h))
+}
+
+// matrix adds prob times the resolvent's part of the spectral matrix to column k of dst, as PSD.matrix has it.
+func (r *resolvent) matrix(t angle, dst [][]float64, k int, prob float64) {
+	w := r.width
+	x := make([]complex128, w*w)
+	left, right := make([]complex128, w), make([]complex128, w)
+	for i := range w {
+		for j := range w {
+			clear(left)
+			clear(right)
+			left[i], right[j] = 1, 1
+			x[i*w+j] = r.value(t, left, right)
+		}
+	}
+	for i := range w {
+		for j := i; j < w; j++ {
+			// S_ij is x_ij for rising lags and the conjugate of x_ji for falling ones.
+			dst[i*w+j][k] += prob * (real(x[i*w+j]) + real(x[j*w+i]))
+			if i != j {
+				dst[j*w+i][k] -= prob * (imag(x[i*w+j]) - imag(x[j*w+i]))
+			}
+		}
+	}
+}
+
+// value is z^(q+1) u' (I - zH)^-1 b, where u is weighed by left and b by right.
+func (r *resolvent) value(t angle, left, right []complex128) complex128 {
 	n := len(r.columns)
 	if n == 0 {
 		return 0
@@ -201,22 +231,16 @@ func (r *resolvent) at(t angle, h []complex128) float64 {
 	var s *solveSpace
 	select {
 	case s = <-r.work:
+		clear(s.b)
+		clear(s.u)
 	default:
 		s = &solveSpace{make([]complex128, n), make([]complex128, n), make([]complex128, n), make([]complex128, n)}
 	}
-	defer func() {
-		select {
-		case r.work <- s:
-		default:
-		}
-	}()
-	clear(s.b)
-	clear(s.u)
 	for k := range r.length {
 		turn := power(t, -k)
-		for j, hj := range h {
-			right := hj * turn
-			left := complex(real(right), -imag(right))
+		back := complex(real(turn), -imag(turn))
+		for j := range r.width {
+			right, left := right[j]*turn, left[j]*back
 			b, u := r.b[k*r.width+j], r.u[k*r.width+j]
 			for i := range n {
 				s.b[i] += complex(real(right)*b[i], imag(right)*b[i])
@@ -224,12 +248,18 @@ func (r *resolvent) at(t angle, h []complex128) float64 {
 			}
 		}
 	}
-	z := power(t, -r.length)
-	x := s.solve(r.columns, z)
-	return 2 * real(power(t, -r.length*r.steps)*x)
+	x := s.solve(r.columns, power(t, -r.length))
+	select {
+	case r.work <- s:
+	default:
+	}
+	return power(t, -r.length*r.steps) * x
 }
 
 // solve returns u' (I - zH)^-1 b and uses up b and u.
+//
+// A = I - zH is solved from its last row upward: two neighbouring columns combine so that the row has one entry left,
+// which gives one unknown; the larger entry is the pivot. Neither factor has to be kept.
 func (s *solveSpace) solve(columns [][]float64, z complex128) complex128 {
 	b, u, w, a := s.b, s.u, s.w, s.a
 	n := len(columns)
