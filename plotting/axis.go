@@ -76,7 +76,7 @@ var prefixes = [...]string{"a", "f", "p", "n", "µ", "m", "", "k", "M", "G", "T"
 func prefix(largest float64, power int) (symbol string, factor float64) {
 	least := 1.0 // so that values lie in [1, 1000)
 	if power == 2 {
-		least = 0.1 // and squared ones in [0.1, 100000)
+		least = 0.01 // and squared ones in [0.01, 10000)
 	}
 	i := len(prefixes) - 1
 	for i > 0 && !(math.Abs(largest) >= least*thousands(i, power)*(1-1e-9)) {

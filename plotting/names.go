@@ -76,12 +76,17 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 		envelopes[i] = newEnvelope(c, c.ClipLinesXY(v.lines(c, p)...))
 	}
 	taken := n.avoid(c, p)
+	least := vg.Length(3 * nameGap) // of room: the name must be nearer to its own curve than to any other
 	_, inCells := p.TextHandler.(characters)
+	if inCells {
+		least = 2 * cellHeight
+	}
 	var out []vg.Point
 	for i := range n.curves {
 		sty := n.textStyle(i, p)
 		width, height := sty.Width(n.label(i)), sty.Height(n.label(i))
-		best, bestRoom := vg.Rectangle{}, vg.Length(-1)
+		var best vg.Rectangle
+		bestScore, found := vg.Length(0), false
 		for x := c.Min.X + 2*nameGap; x+width+2*nameGap <= c.Max.X; x += 4 {
 			low, high, ok := envelopes[i].over(x-nameGap, x+width+nameGap)
 			if !ok || high-low > 2*height {
@@ -95,12 +100,17 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 				if box.Min.Y < c.Min.Y || box.Max.Y > c.Max.Y || overlaps(box, taken) {
 					continue
 				}
-				if room := clearance(box, envelopes, i, c.Size().Y); room > bestRoom {
-					best, bestRoom = box, room
+				room := clearance(box, envelopes, i, 4*height)
+				if room < least {
+					continue
+				}
+				// Best where the curve is flat: there the whole name is near it.
+				if score := room - 3*(high-low); !found || score > bestScore {
+					best, bestScore, found = box, score, true
 				}
 			}
 		}
-		if bestRoom < nameGap {
+		if !found {
 			return nil
 		}
 		taken = append(taken, best)

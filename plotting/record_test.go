@@ -6,6 +6,7 @@ import (
 
 	"gonum.org/v1/plot/font"
 	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
 )
 
 // A recorder draws a figure and keeps where its texts and dark lines lie, in points from the top left.
@@ -49,6 +50,11 @@ func (r *recorder) Stroke(p vg.Path) {
 		line = append(line, [2]float64{x, y})
 	}
 	r.lines = append(r.lines, line)
+}
+
+// canvasOf returns where a figure of the default size draws its plot.
+func canvasOf(c vg.CanvasSizer) draw.Canvas {
+	return draw.Crop(draw.New(c), margin, -margin, margin, -margin)
 }
 
 // checkLayout fails unless all texts of the figure lie within it, apart from each other and clear of all lines.

@@ -35,6 +35,10 @@ type SpectrumFigure struct {
 	of     []density
 	linear bool
 	upto   float64 // Hz
+
+	curves []*curve
+	stems  *tones
+	legend *names
 }
 
 // Spectrum draws the one-sided densities of one or more spectra over one another, over frequency, each in a colour and
@@ -101,10 +105,11 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	}
 	stems := &tones{}
 	legend := &names{avoid: stems.avoid}
+	labels := distinct(of)
 	var densities, powers []float64 // all that is finite, in the figure's unit
 	for i, d := range of {
 		style := seriesStyle(i)
-		v := &curve{name: d.Name(), xs: fs, ys: d.Density(nil, fs), style: style}
+		v := &curve{name: labels[i], xs: fs, ys: d.Density(nil, fs), style: style}
 		for k, y := range v.ys {
 			v.ys[k] = unit.value(d, y)
 			if !math.IsInf(v.ys[k], 0) && (!linear || v.ys[k] > 0) {
@@ -151,8 +156,26 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	}
 	p.Add(stems, legend) // stems over curves: many stand in a null, where every curve passes
 	s.fit = legend.fit
+	s.curves, s.stems, s.legend = legend.curves, stems, legend
 	s.Alt = s.alt(len(powers))
 	return s
+}
+
+// distinct returns the names of the spectra, equal ones numbered.
+func distinct(of []density) []string {
+	count, seen := map[string]int{}, map[string]int{}
+	for _, d := range of {
+		count[d.Name()]++
+	}
+	out := make([]string, len(of))
+	for i, d := range of {
+		out[i] = d.Name()
+		if count[d.Name()] > 1 {
+			seen[d.Name()]++
+			out[i] += fmt.Sprintf(" (%d)", seen[d.Name()])
+		}
+	}
+	return out
 }
 
 // alt says what the figure shows.

@@ -2,6 +2,7 @@ package plotting
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/font"
@@ -115,13 +116,32 @@ func (t *tones) GlyphBoxes(p *plot.Plot) []plot.GlyphBox {
 	return []plot.GlyphBox{{X: 1, Rectangle: vg.Rectangle{Max: vg.Point{X: end}}}}
 }
 
+// weight returns the width of the stems and the radius of their marks: less where they stand so close that they would
+// run into one another.
+func weight(stems []stem) (line, mark vg.Length) {
+	at := make([]vg.Length, len(stems))
+	for i, s := range stems {
+		at[i] = s.top.X
+	}
+	slices.Sort(at)
+	line, mark = 1.1, markRadius
+	for i := range len(at) - 1 {
+		if gap := at[i+1] - at[i]; gap > pixel/2 {
+			line, mark = min(line, max(pixel/2, 0.35*gap)), min(mark, max(pixel/2, 0.7*gap))
+		}
+	}
+	return line, mark
+}
+
 // Plot draws the stems and their axis.
 func (t *tones) Plot(c draw.Canvas, p *plot.Plot) {
-	for _, s := range t.stems(c, p) {
+	stems := t.stems(c, p)
+	width, radius := weight(stems)
+	for _, s := range stems {
 		style := t.series[s.series].style
-		line := draw.LineStyle{Color: style.Color, Width: 1.1}
+		line := draw.LineStyle{Color: style.Color, Width: width}
 		c.StrokeLine2(line, s.top.X, c.Min.Y, s.top.X, s.top.Y)
-		t.series[s.series].mark.DrawGlyph(&c, draw.GlyphStyle{Color: style.Color, Radius: markRadius}, s.top)
+		t.series[s.series].mark.DrawGlyph(&c, draw.GlyphStyle{Color: style.Color, Radius: radius}, s.top)
 	}
 	if t.label == "" {
 		return

@@ -36,7 +36,7 @@ func Waveform(c *linecode.Code, t pulse.Train, bits []byte) *Figure {
 	if c == nil {
 		panic(fmt.Errorf("plotting: Waveform of a nil code; give it what linecode.New returned without an error"))
 	}
-	return newWaveform(any(c).(coder), t, bits)
+	return newWaveform(c, t, bits)
 }
 
 // coder is what a waveform figure asks of a code; *linecode.Code has it.
