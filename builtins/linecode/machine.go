@@ -48,6 +48,19 @@ func (m *machine) flushed(s int) []int32 {
 	return m.outputs.at(m.flush[s])
 }
 
+// flushLengths returns the different numbers of symbols that states owe when the data end.
+func (m *machine) flushLengths() []int {
+	if m.flush == nil {
+		return []int{0}
+	}
+	var lengths []int
+	for _, i := range m.flush {
+		lengths = append(lengths, m.outputs.length(i))
+	}
+	slices.Sort(lengths)
+	return slices.Compact(lengths)
+}
+
 // symbol returns the index of a level in the alphabet, or -1.
 func (m *machine) symbol(level float64) int {
 	if i, ok := slices.BinarySearch(m.levels, level); ok {
