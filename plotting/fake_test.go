@@ -33,6 +33,7 @@ func (d fake) Lines(fmax float64) []spectrum.Line {
 	}
 	return out
 }
+func (d fake) Classes() []spectrum.Class         { return nil }
 func (d fake) Within(float64) float64            { return 10 * d.rate }
 func (d fake) Watts(v2 float64) (float64, error) { return v2 / d.load, nil }
 func (d fake) DBm(v2 float64) (float64, error)   { return 10 * math.Log10(v2/d.load/1e-3), nil }

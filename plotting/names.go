@@ -15,7 +15,7 @@ import (
 const (
 	longestName = 40 // characters of a name that a figure shows
 	nameGap     = 3  // points between a name and what is beside it
-	swatch      = 26 // points of line beside a name in the strip
+	swatch      = 24 // points of line before a name in the strip
 )
 
 // names names the curves of a figure: each beside its curve where all find room, else all of them in a strip above the
@@ -65,7 +65,7 @@ func (n *names) fit(p *plot.Plot, c draw.Canvas) {
 // entry returns the width of a name in the strip.
 func (n *names) entry(i int, p *plot.Plot) vg.Length {
 	sty := n.textStyle(i, p)
-	return swatch + sty.Width(" ")*2 + sty.Width(n.label(i)) + 2*nameGap
+	return swatch + nameGap + sty.Width(" ")*2 + sty.Width(n.label(i)) + 2*nameGap
 }
 
 // place looks for a place beside each curve, where the name crosses no curve, no other name and nothing else. It
@@ -89,10 +89,16 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 		bestScore, found := vg.Length(0), false
 		for x := c.Min.X + 2*nameGap; x+width+2*nameGap <= c.Max.X; x += 4 {
 			low, high, ok := envelopes[i].over(x-nameGap, x+width+nameGap)
-			if !ok || high-low > 2*height {
-				continue // too steep: a name that keeps clear of the curve would stand far from it
+			lowest, highest, there := envelopes[i].over(x+width/2-1, x+width/2+1)
+			if !ok || !there {
+				continue
 			}
-			for _, y := range []vg.Length{high + nameGap, low - nameGap - height} {
+			for side, y := range []vg.Length{high + nameGap, low - nameGap - height} {
+				// How far the middle of the curve is off because its sides are in the way of the name.
+				off := []vg.Length{high - highest, lowest - low}[side]
+				if off > height {
+					continue
+				}
 				if inCells {
 					y = vg.Length(math.Round(float64(y/cellHeight))) * cellHeight
 				}
@@ -104,8 +110,8 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 				if room < least {
 					continue
 				}
-				// Best where the curve is flat: there the whole name is near it.
-				if score := room - 3*(high-low); !found || score > bestScore {
+				// Best close to the curve, and where that is high: there it is seen.
+				if score := room - 2*off + 0.2*(y-c.Min.Y); !found || score > bestScore {
 					best, bestScore, found = box, score, true
 				}
 			}
@@ -174,7 +180,7 @@ func (n *names) Plot(c draw.Canvas, p *plot.Plot) {
 			if n.marks[i] != nil {
 				n.marks[i].DrawGlyph(&c, draw.GlyphStyle{Color: n.curves[i].style.Color, Radius: markRadius}, vg.Point{X: x + swatch/2, Y: middle})
 			}
-			c.FillText(sty, vg.Point{X: x + swatch + sty.Width(" "), Y: y + sty.FontExtents().Descent}, n.label(i))
+			c.FillText(sty, vg.Point{X: x + swatch + nameGap + sty.Width(" "), Y: y + sty.FontExtents().Descent}, n.label(i))
 			x += n.entry(i, p)
 		}
 	}

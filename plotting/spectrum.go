@@ -25,6 +25,7 @@ type density interface {
 	Density(dst, f []float64) []float64
 	Lines(fmax float64) []spectrum.Line
 	Within(part float64) float64
+	Classes() []spectrum.Class
 	DBm(v2 float64) (float64, error)
 	Watts(v2 float64) (float64, error)
 }
@@ -161,7 +162,8 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	return s
 }
 
-// distinct returns the names of the spectra, equal ones numbered.
+// distinct returns the names of the spectra, equal ones numbered. An average over the classes in which the data can end
+// says so: no single waveform has it.
 func distinct(of []density) []string {
 	count, seen := map[string]int{}, map[string]int{}
 	for _, d := range of {
@@ -174,21 +176,20 @@ func distinct(of []density) []string {
 			seen[d.Name()]++
 			out[i] += fmt.Sprintf(" (%d)", seen[d.Name()])
 		}
+		if n := len(d.Classes()); n > 0 {
+			out[i] += fmt.Sprintf(", average of %d classes", n)
+		}
 	}
 	return out
 }
 
 // alt says what the figure shows.
 func (s *SpectrumFigure) alt(tones int) string {
-	var list []string
-	for _, d := range s.of {
-		list = append(list, d.Name())
-	}
 	stems := "no tones"
 	if tones > 0 {
 		stems = fmt.Sprintf("%d tones as stems, %s", tones, s.unit().name(""))
 	}
-	return fmt.Sprintf("Power density of %s from 0 to %s in %s; %s.", strings.Join(list, ", "), quantity(s.upto, "Hz"), s.unit().name("/Hz"), stems)
+	return fmt.Sprintf("Power density of %s from 0 to %s in %s; %s.", strings.Join(distinct(s.of), ", "), quantity(s.upto, "Hz"), s.unit().name("/Hz"), stems)
 }
 
 // A powerUnit is what the axes of a spectrum figure count in.
@@ -248,7 +249,7 @@ func (u powerUnit) axis(values []float64, per string) (low, high float64, scale 
 		if top == 0 {
 			top = 1
 		}
-		return 0, 1.06 * top, ticks{unit: factor}, symbol + u.name(per)
+		return 0, 1.1 * top, ticks{unit: factor}, symbol + u.name(per)
 	}
 	// The lowest hundredth belongs to nulls, which run off at the bottom.
 	sorted := slices.Sorted(slices.Values(values))
@@ -256,7 +257,7 @@ func (u powerUnit) axis(values []float64, per string) (low, high float64, scale 
 	if n := len(sorted); n > 0 {
 		low = max(low, sorted[n/100]-3)
 	}
-	low, high = 5*math.Floor(low/5), 5*math.Ceil((top+2)/5)
+	low, high = 5*math.Floor(low/5), 5*math.Ceil((top+4)/5)
 	if high-low < 20 {
 		low = high - 20
 	}

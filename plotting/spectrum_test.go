@@ -115,6 +115,23 @@ func TestTonesSideBySide(t *testing.T) {
 	}
 }
 
+// TestTonesDense: tens of thousands of tones are drawn as what can be seen of them.
+func TestTonesDense(t *testing.T) {
+	var lines []spectrum.Line
+	for k := range 60_000 {
+		lines = append(lines, spectrum.Line{Freq: float64(k) * 50, Power: 1e-3 * (1 + 0.5*math.Sin(float64(k)))})
+	}
+	s := newSpectrum([]density{fake{"long period", 1e6, 50, func(float64) float64 { return 0 }, lines}}, false, 3e6)
+	svg, err := s.SVG()
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(svg) > 300_000 {
+		t.Errorf("%d bytes", len(svg))
+	}
+	checkLayout(t, s.Figure)
+}
+
 // TestSpectrumRange: one to three symbol rates, as the doc comment has it.
 func TestSpectrumRange(t *testing.T) {
 	for _, tt := range []struct {

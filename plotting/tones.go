@@ -37,35 +37,43 @@ type stem struct {
 	top    vg.Point
 }
 
-// stems returns the tones that the axes show, those of the first series first. Tones of several series at one
-// frequency stand side by side around it.
+// stems returns the tones that the axes show, series by series. Tones of several series at one frequency stand side by
+// side around it.
 func (t *tones) stems(c draw.Canvas, p *plot.Plot) []stem {
 	x, _ := p.Transforms(&c)
-	at := func(f float64) (v vg.Length, shown bool) {
-		return x(f), f >= p.X.Min && f <= p.X.Max*(1+1e-12)
-	}
-	shared := map[int64]int{} // number of tones at a place, in hundredths of a point
-	place := func(v vg.Length) int64 { return int64(math.Round(v.Points() * 100)) }
-	for _, s := range t.series {
+	var all []stem
+	for k, s := range t.series {
+		var own []stem
 		for i, f := range s.freqs {
-			if v, ok := at(f); ok && s.values[i] > t.min {
-				shared[place(v)]++
+			if f >= p.X.Min && f <= p.X.Max*(1+1e-12) && s.values[i] > t.min {
+				height := math.Min(1, (s.values[i]-t.min)/(t.max-t.min))
+				own = append(own, stem{k, vg.Point{X: x(f), Y: c.Y(height)}})
 			}
 		}
+		all = append(all, highest(own)...)
 	}
-	seen := map[int64]int{}
+	place := func(s stem) int64 { return int64(math.Round(s.top.X.Points() * 100)) }
+	count, seen := map[int64]int{}, map[int64]int{}
+	for _, s := range all {
+		count[place(s)]++
+	}
+	for i, s := range all {
+		at := place(s)
+		all[i].top.X += (vg.Length(seen[at]) - vg.Length(count[at]-1)/2) * apart
+		seen[at]++
+	}
+	return all
+}
+
+// highest returns the highest of a series' stems in each pixel column; it covers the others. They rise in frequency.
+func highest(stems []stem) []stem {
 	var out []stem
-	for k, s := range t.series {
-		for i, f := range s.freqs {
-			v, ok := at(f)
-			if !ok || !(s.values[i] > t.min) {
-				continue
-			}
-			key := place(v)
-			shift := (vg.Length(seen[key]) - vg.Length(shared[key]-1)/2) * apart
-			seen[key]++
-			height := math.Min(1, (s.values[i]-t.min)/(t.max-t.min))
-			out = append(out, stem{k, vg.Point{X: v + shift, Y: c.Y(height)}})
+	for _, s := range stems {
+		n := len(out)
+		if n == 0 || math.Floor(float64(out[n-1].top.X/pixel)) != math.Floor(float64(s.top.X/pixel)) {
+			out = append(out, s)
+		} else if s.top.Y > out[n-1].top.Y {
+			out[n-1] = s
 		}
 	}
 	return out
@@ -137,11 +145,18 @@ func weight(stems []stem) (line, mark vg.Length) {
 func (t *tones) Plot(c draw.Canvas, p *plot.Plot) {
 	stems := t.stems(c, p)
 	width, radius := weight(stems)
-	for _, s := range stems {
-		style := t.series[s.series].style
-		line := draw.LineStyle{Color: style.Color, Width: width}
-		c.StrokeLine2(line, s.top.X, c.Min.Y, s.top.X, s.top.Y)
-		t.series[s.series].mark.DrawGlyph(&c, draw.GlyphStyle{Color: style.Color, Radius: radius}, s.top)
+	// Series by series, first lines, then marks: an SVG holds drawings of one style that follow each other as one path.
+	for k, series := range t.series {
+		for _, s := range stems {
+			if s.series == k {
+				c.StrokeLine2(draw.LineStyle{Color: series.style.Color, Width: width}, s.top.X, c.Min.Y, s.top.X, s.top.Y)
+			}
+		}
+		for _, s := range stems {
+			if s.series == k {
+				series.mark.DrawGlyph(&c, draw.GlyphStyle{Color: series.style.Color, Radius: radius}, s.top)
+			}
+		}
 	}
 	if t.label == "" {
 		return
