@@ -176,7 +176,9 @@ func TestListOfThisUser(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	at := func(dir string) int { return slices.IndexFunc(found, func(r Registration) bool { return r.Dir == dir }) }
+	at := func(dir string) int {
+		return slices.IndexFunc(found, func(r Registration) bool { return r.Dir == dir })
+	}
 	if i := at(broken); i != 0 || !strings.Contains(found[i].Problem, "/gone/linewright is gone") {
 		t.Errorf("JUPYTER_PATH comes first and its program is gone; found %+v", found)
 	}

@@ -106,13 +106,28 @@ func TestWriteKeepsPermissionsAndLinks(t *testing.T) {
 	}
 }
 
-func TestWriteRefusesWhatIsNoFile(t *testing.T) {
+func TestWriteAndCheckRefuseWhatIsNoFile(t *testing.T) {
 	dir := t.TempDir()
-	if err := Write(dir, 0o644, text("x")); err == nil || !strings.Contains(err.Error(), "no regular file") {
-		t.Errorf("a folder: %v", err)
-	}
 	missing := filepath.Join(dir, "no", "a.txt")
-	if err := Write(missing, 0o644, text("x")); !errors.Is(err, fs.ErrNotExist) || !strings.Contains(err.Error(), missing) {
-		t.Errorf("a missing folder: %v, want one that names %s", err, missing)
+	for name, f := range map[string]func(string) error{
+		"Write": func(path string) error { return Write(path, 0o644, text("x")) },
+		"Check": Check,
+	} {
+		if err := f(dir); err == nil || !strings.Contains(err.Error(), "no regular file") {
+			t.Errorf("%s of a folder: %v", name, err)
+		}
+		if err := f(missing); !errors.Is(err, fs.ErrNotExist) || !strings.Contains(err.Error(), missing) {
+			t.Errorf("%s in a missing folder: %v, want one that names %s", name, err, missing)
+		}
+	}
+}
+
+func TestCheckChangesNothing(t *testing.T) {
+	dir := t.TempDir()
+	if err := Check(filepath.Join(dir, "new.txt")); err != nil {
+		t.Error(err)
+	}
+	if got := names(t, dir); got != "" {
+		t.Errorf("the folder holds %s", got)
 	}
 }
