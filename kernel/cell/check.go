@@ -18,19 +18,12 @@ type unit struct {
 	info    *types.Info
 	decls   []*decl                         // the cell's own declarations and the dependants that are compiled again
 	plain   map[*ast.FuncDecl]*ast.FuncDecl // functions and methods that were checked in the form of plain functions
-	objects map[string]types.Object         // the new package-level objects
+	objects map[string]types.Object         // the new package-level objects; methods as "T.M"
+	texts   map[string]*decl                // where they come from
 	vars    map[types.Object]*types.Var     // variable of a statement -> the package-level variable that it becomes
 	order   []*types.Var                    // the values of vars in source order
 	imports map[string]string               // name -> path, of the cell's import declarations
-	methods []*method                       // methods on types of earlier cells
 	last    ast.Expr                        // the last statement's expression if it has a value
-}
-
-// method is a method that a cell adds to a type of an earlier cell, or defines anew.
-type method struct {
-	decl *ast.FuncDecl
-	on   *types.Named
-	fn   *types.Func
 }
 
 // problem is one error of the checker.
@@ -41,25 +34,20 @@ type problem struct {
 
 // check type-checks a cell in three passes: declarations, statements, and the functions that need the others' results
 // (a function that uses a variable of its own cell, a method on a type of an earlier cell). Nothing of the session changes,
-// but for methods that are added to earlier types; see phantoms.
-func (in *Interpreter) check(src *source) (*unit, error) {
+// but for methods that are added to earlier types; see addMethod.
+func (in *Interpreter) check(src *source, p *plan) (*unit, error) {
 	u := &unit{src: src, info: newInfo(), plain: map[*ast.FuncDecl]*ast.FuncDecl{}, objects: map[string]types.Object{},
-		vars: map[types.Object]*types.Var{}, imports: map[string]string{}}
+		texts: map[string]*decl{}, vars: map[types.Object]*types.Var{}, imports: map[string]string{}}
 	if err := in.collectImports(u); err != nil {
 		return nil, err
 	}
+	u.decls = p.decls
 	own := map[string]bool{}      // package-level names of the declarations
 	ownTypes := map[string]bool{} // of these the types
-	for _, d := range src.decls {
-		if g, ok := d.node.(*ast.GenDecl); ok && g.Tok == token.IMPORT {
-			continue
-		}
-		if f, ok := d.node.(*ast.FuncDecl); ok && f.Recv == nil && f.Name.Name == "init" {
-			return nil, in.problems(src, []problem{{f.Name.Pos(), "func init: a cell is run, it is not initialised; write the statements in the cell"}})
-		}
-		u.decls = append(u.decls, d)
+	for _, d := range u.decls {
 		for _, n := range declared(d.node) {
 			own[n] = true
+			u.texts[n] = d
 			if g, ok := d.node.(*ast.GenDecl); ok && g.Tok == token.TYPE {
 				ownTypes[n] = true
 			}
@@ -68,7 +56,7 @@ func (in *Interpreter) check(src *source) (*unit, error) {
 	variables := map[string]bool{}
 	for _, id := range src.variables() {
 		if own[id.Name] {
-			return nil, in.problems(src, []problem{{id.Pos(), id.Name + " redeclared in this cell"}})
+			return nil, in.problems([]problem{{id.Pos(), id.Name + " redeclared in this cell"}})
 		}
 		variables[id.Name] = true
 	}
@@ -79,7 +67,7 @@ func (in *Interpreter) check(src *source) (*unit, error) {
 	var decls []ast.Decl
 	for _, d := range u.decls {
 		if f, ok := d.node.(*ast.FuncDecl); ok && late[f] {
-			decls = append(decls, heading(f, u.plain[f]))
+			decls = append(decls, heading(f, u.plain[f], ownTypes))
 			continue
 		}
 		decls = append(decls, d.node)
@@ -92,15 +80,13 @@ func (in *Interpreter) check(src *source) (*unit, error) {
 			u.objects[name] = o
 		}
 	}
-	if err := in.addMethods(u); err != nil {
+	if err := in.addMethods(u, first, ownTypes); err != nil {
 		return nil, err
 	}
 
 	// Second pass: statements.
 	second := in.scope(own, u.imports)
-	for _, name := range sorted(u.objects) {
-		second.Scope().Insert(u.objects[name])
-	}
+	u.insert(second)
 	if n := len(src.fn.Body.List); n > 0 {
 		if x, ok := src.fn.Body.List[n-1].(*ast.ExprStmt); ok {
 			u.last = x.X
@@ -132,9 +118,7 @@ func (in *Interpreter) check(src *source) (*unit, error) {
 			replaced[name] = true
 		}
 		third := in.scope(replaced, u.imports)
-		for _, name := range sorted(u.objects) {
-			third.Scope().Insert(u.objects[name])
-		}
+		u.insert(third)
 		var decls []ast.Decl
 		for _, d := range u.decls {
 			if f, ok := d.node.(*ast.FuncDecl); ok && late[f] {
@@ -145,7 +129,16 @@ func (in *Interpreter) check(src *source) (*unit, error) {
 			return nil, err
 		}
 	}
-	return u, nil
+	return u, in.usesPhantom(u)
+}
+
+// insert puts the unit's new objects into a package.
+func (u *unit) insert(p *types.Package) {
+	for _, name := range sorted(u.objects) {
+		if !strings.Contains(name, ".") {
+			p.Scope().Insert(u.objects[name])
+		}
+	}
 }
 
 func newInfo() *types.Info {
@@ -190,7 +183,7 @@ func (in *Interpreter) collectImports(u *unit) error {
 			}
 		}
 	}
-	return in.problems(u.src, bad)
+	return in.problems(bad)
 }
 
 // noPackage says that a package is not there, and which one may have been meant.
@@ -212,45 +205,32 @@ func (in *Interpreter) noPackage(path string) string {
 // late finds the functions that the first pass can only take without their bodies, and makes plain functions of them.
 func (in *Interpreter) late(u *unit, ownTypes, variables map[string]bool) map[*ast.FuncDecl]bool {
 	late := map[*ast.FuncDecl]bool{}
-	foreign := false
+	foreign := false // with a method on an earlier type, any function may use it
 	for _, d := range u.decls {
 		if f, ok := d.node.(*ast.FuncDecl); ok && f.Recv != nil {
-			if name, generic := receiver(f); !ownTypes[name] && !generic && in.isType(name) {
+			if name, generic := receiver(f); !ownTypes[name] && !generic {
 				foreign = true
 			}
 		}
 	}
 	for i, d := range u.decls {
 		f, ok := d.node.(*ast.FuncDecl)
-		if !ok {
+		if !ok || f.Body == nil {
 			continue
 		}
-		name, generic := receiver(f)
-		if generic {
+		if _, generic := receiver(f); generic {
 			continue // its type parameters exist only in the method's own form
 		}
-		used := false
-		if f.Body != nil {
-			for n := range mentions(f.Body) {
-				used = used || variables[n]
-			}
+		used := foreign
+		for n := range mentions(f.Body) {
+			used = used || variables[n]
 		}
-		if used || foreign {
+		if used {
 			late[f] = true
 			u.plain[f] = asFunction(f, fmt.Sprintf("%sf%s%d", kernel, mark, i))
 		}
-		_ = name
 	}
 	return late
-}
-
-func (in *Interpreter) isType(name string) bool {
-	e := in.names[name]
-	if e == nil {
-		return false
-	}
-	_, ok := e.obj.(*types.TypeName)
-	return ok
 }
 
 // asFunction returns a method as a function whose first parameter is the receiver; a function is only renamed.
@@ -285,25 +265,20 @@ func asFunction(f *ast.FuncDecl, name string) *ast.FuncDecl {
 }
 
 // heading is the function of the first pass: without a body, and for a method on an earlier type as a plain function.
-func heading(f, plain *ast.FuncDecl) *ast.FuncDecl {
+func heading(f, plain *ast.FuncDecl, ownTypes map[string]bool) *ast.FuncDecl {
 	h := *f
-	if f.Recv != nil {
+	if name, _ := receiver(f); f.Recv != nil && !ownTypes[name] {
 		h = *plain
 	}
 	h.Body = nil
 	return &h
 }
 
-// addMethods gives the earlier types their new methods.
-func (in *Interpreter) addMethods(u *unit) error {
-	return nil
-}
-
 // scope returns a package that holds the session's objects except those of the given names.
 func (in *Interpreter) scope(without map[string]bool, imports map[string]string) *types.Package {
 	p := types.NewPackage("main", "main")
 	for name, e := range in.names {
-		if _, imported := imports[name]; !imported && !without[name] {
+		if _, imported := imports[name]; !imported && !without[name] && !strings.Contains(name, ".") {
 			p.Scope().Insert(e.obj)
 		}
 	}
@@ -335,7 +310,7 @@ func (in *Interpreter) pass(u *unit, p *types.Package, decls []ast.Decl, last as
 	}}
 	// The errors come one by one to the function above.
 	_ = types.NewChecker(&conf, in.fset, p, u.info).Files([]*ast.File{f})
-	return in.problems(u.src, bad)
+	return in.problems(bad)
 }
 
 const goVersion = "go1.26"
@@ -383,7 +358,7 @@ func (in *Interpreter) packageNamed(imports map[string]string, name string) stri
 }
 
 // problems makes one error of the checker's findings, or nil of none.
-func (in *Interpreter) problems(src *source, list []problem) error {
+func (in *Interpreter) problems(list []problem) error {
 	if len(list) == 0 {
 		return nil
 	}

@@ -86,9 +86,6 @@ func (h host) Parameter(name string) (string, bool) {
 
 func (h host) Context() context.Context { return h.in.here().ctx }
 
-// here returns the run that the calling goroutine belongs to.
-func (in *Interpreter) here() *run { return in.current.Load() }
-
 // stream passes on what a cell prints.
 type stream struct {
 	in   *Interpreter

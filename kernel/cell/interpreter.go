@@ -2,17 +2,18 @@ package cell
 
 import (
 	"context"
+	"fmt"
+	"go/ast"
 	"go/parser"
 	"go/token"
 	"go/types"
 	"reflect"
-	"slices"
+	"strings"
 	"sync"
 	"sync/atomic"
 
 	"github.com/traefik/yaegi/interp"
 
-	"linewright/builtins/page"
 	"linewright/plotting"
 )
 
@@ -56,6 +57,8 @@ type Interpreter struct {
 	imports   map[string]string       // names of the cells' own imports -> path
 	preloaded map[string]string       // names of packages that need no import -> path
 	slots     map[types.Object]string // the interpreter's names of live objects and of all types
+	phantoms  map[*types.Func]bool    // methods of cells that then did not compile
+	methods   map[types.Object]string // method -> the interpreter's variable that holds its function
 	gens      generations
 	aliases   map[string]string // package path -> name under which the interpreter imports it
 	aliasPath map[string]string // the reverse
@@ -64,14 +67,19 @@ type Interpreter struct {
 	current atomic.Pointer[run] // the running cell, or the last one
 	settled chan struct{}       // closed when an interrupted cell has come to rest; owned by the holder of running
 
-	page pageState
+	marked     map[string]bool // marks that the interpreter has
+	tracks     tracks
+	traces     traces
+	goroutines goroutines
+	page       pageState
 }
 
 // entry is one live package-level declaration.
 type entry struct {
 	obj  types.Object
 	cell int
-	decl *decl // nil for variables
+	decl *decl                   // nil for variables
+	uses map[string]types.Object // what the declaration mentions: package-level names, methods as "T.M"
 }
 
 // New starts a session.
@@ -83,8 +91,12 @@ func New(opt Options) (*Interpreter, error) {
 	in := &Interpreter{
 		opt: opt, lib: lib,
 		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
-		slots: map[types.Object]string{}, gens: generations{},
+		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, gens: generations{},
 		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
+		marked:     map[string]bool{},
+		tracks:     tracks{cells: map[int][]*function{}, marks: map[string]*int{}},
+		traces:     traces{of: map[uint64][]int{}},
+		goroutines: goroutines{of: map[uint64]*run{}},
 	}
 	for name, path := range lib.own {
 		in.preloaded[name] = path
@@ -109,6 +121,7 @@ func (in *Interpreter) hooks() interp.Exports {
 		"linewright/cell/cell": {
 			"Show":    reflect.ValueOf(in.show),
 			"Recover": reflect.ValueOf(in.recovered),
+			"Go":      reflect.ValueOf(in.start),
 		},
 	}
 }
@@ -120,7 +133,7 @@ func (in *Interpreter) Run(ctx context.Context, n int, code, cellID string, out 
 	defer in.running.Unlock()
 	<-in.settled
 	r := in.begin(ctx, n, code, cellID, out)
-	defer r.cancel()
+	defer r.end()
 	p, err := in.prepare(r, code)
 	if err != nil {
 		return nil, r.compileError(err)
@@ -162,7 +175,7 @@ func (in *Interpreter) prepare(r *run, code string) (*program, error) {
 	if err != nil {
 		return nil, err
 	}
-	u, err := in.check(src)
+	u, err := in.analyse(src)
 	if err != nil {
 		return nil, err
 	}
@@ -170,26 +183,50 @@ func (in *Interpreter) prepare(r *run, code string) (*program, error) {
 	if err != nil {
 		return nil, err
 	}
-	if err := in.vm.declare(slices.Concat(p.imports)); err != nil {
+	if err := in.vm.declare(p.imports); err != nil {
 		return nil, err
 	}
-	for _, d := range u.src.decls {
-		_ = d
+	for alias := range p.used {
+		in.imported[alias] = true
 	}
-	for a := range in.aliasPath {
-		in.imported[a] = true
+	for _, group := range [][]ast.Decl{p.types, p.vars, p.funcs} {
+		if err := in.vm.declare(group); err != nil {
+			return nil, err
+		}
 	}
-	if err := in.vm.declare(p.types); err != nil {
+	if err := in.mark(p); err != nil {
 		return nil, err
 	}
-	if err := in.vm.declare(p.vars); err != nil {
-		return nil, err
+	if p.setup != "" {
+		if err := in.vm.call(p.setup); err != nil {
+			return nil, err
+		}
 	}
-	if err := in.vm.declare(p.funcs); err != nil {
-		return nil, err
-	}
+	in.tracks.add(u.src.n, p.functions)
 	in.commit(u, p)
 	return p, nil
+}
+
+// mark finds the new marks in the interpreter's memory.
+func (in *Interpreter) mark(p *program) error {
+	for name := range p.marks {
+		if in.marked[name] {
+			continue
+		}
+		v, err := in.vm.yaegi.Eval("&" + name)
+		if err != nil {
+			return err
+		}
+		at, ok := v.Interface().(*int)
+		if !ok {
+			return fmt.Errorf("cell: the mark %s is a %v", name, v.Type())
+		}
+		in.marked[name] = true
+		in.tracks.mu.Lock()
+		in.tracks.marks[name] = at
+		in.tracks.mu.Unlock()
+	}
+	return nil
 }
 
 // commit makes a compiled cell's declarations those of the session.
@@ -198,25 +235,30 @@ func (in *Interpreter) commit(u *unit, p *program) {
 		delete(in.names, name)
 		in.imports[name] = path
 	}
-	texts := map[string]*decl{}
-	for _, d := range u.decls {
-		for _, name := range declared(d.node) {
-			texts[name] = d
-		}
-	}
 	for name, o := range u.objects {
-		if e := in.names[name]; e != nil {
-			if _, isType := e.obj.(*types.TypeName); !isType {
+		if e := in.names[name]; e != nil && e.obj != o {
+			if _, isType := e.obj.(*types.TypeName); isType {
+				// Values of the old type may live on, so its name stays known; its methods are not those of the new type.
+				for key := range in.names {
+					if strings.HasPrefix(key, name+".") && u.objects[key] == nil {
+						delete(in.names, key)
+					}
+				}
+			} else if !strings.Contains(name, ".") {
 				delete(in.slots, e.obj)
 			}
 		}
+		if fn, ok := o.(*types.Func); ok {
+			delete(in.phantoms, fn)
+		}
 		delete(in.imports, name)
-		in.names[name] = &entry{obj: o, cell: u.src.n, decl: texts[name]}
+		e := &entry{obj: o, cell: u.src.n, decl: u.texts[name], uses: p.uses[u.texts[name]]}
+		if e.decl != nil {
+			e.cell = e.decl.cell
+		}
+		in.names[name] = e
 	}
 	for o, s := range p.slots {
 		in.slots[o] = s
 	}
 }
-
-// Attach makes this session the host of package page.
-func (in *Interpreter) attach() { page.Attach(host{in}) }

@@ -5,6 +5,7 @@ import (
 	"go/ast"
 	"go/token"
 	"go/types"
+	"strings"
 
 	"golang.org/x/tools/go/ast/astutil"
 )
@@ -12,35 +13,52 @@ import (
 // program is a lowered cell, in the order in which the interpreter must take it.
 type program struct {
 	imports, types, vars, funcs []ast.Decl
-	entry                       string                  // the function of the statements; empty if there are none
+	entry                       string // the function of the statements; empty if there are none
+	setup                       string // a function to call before it, or empty
+	uses                        map[*decl]map[string]types.Object
 	slots                       map[types.Object]string // the interpreter's names of the new objects
 	shown                       []types.Type            // static types of the last expression's values; nil if it has none
 	printed                     bool                    // the last expression is a print, whose count is not shown
+	used                        map[string]bool         // aliases of packages that the interpreter has not imported before
+	functions                   []*function
+	marks                       map[string]bool // variables that hold the places of functions
 }
 
 // lowering rewrites the trees of one unit in place.
 type lowering struct {
-	in   *Interpreter
-	u    *unit
-	p    *program
-	bad  []problem
-	used map[string]bool // aliases of packages that this cell imports into the interpreter
+	in        *Interpreter
+	u         *unit
+	p         *program
+	bad       []problem
+	literals  int                    // function literals so far
+	temps     int                    // variables made so far
+	sets      [][2]string            // variables of methods and the functions that they are to hold
+	synthetic map[*ast.CallExpr]bool // calls that the lowering made
 }
 
 // lower rewrites a checked cell into Go that the interpreter runs well.
 func (in *Interpreter) lower(u *unit) (*program, error) {
-	l := &lowering{in: in, u: u, p: &program{slots: map[types.Object]string{}}, used: map[string]bool{}}
+	l := &lowering{in: in, u: u, p: &program{slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}}
 	pos := u.src.fn.Body.Lbrace
 	l.name(pos)
 	for _, d := range u.decls {
+		l.p.uses[d] = l.uses(d.node)
+	}
+	for _, d := range u.decls {
 		l.decl(d.node)
 	}
+	l.setup(pos)
 	l.body(u.src.fn)
-	for _, alias := range sorted(l.used) {
+	for _, m := range sorted(l.p.marks) {
+		if !l.in.marked[m] {
+			l.p.vars = append(l.p.vars, varDecl(pos, m, &ast.Ident{Name: "int", NamePos: pos}))
+		}
+	}
+	for _, alias := range sorted(l.p.used) {
 		l.p.imports = append(l.p.imports, importDecl(pos, alias, l.in.aliasPath[alias]))
 	}
 	if len(l.bad) > 0 {
-		return nil, in.problems(u.src, l.bad)
+		return nil, in.problems(l.bad)
 	}
 	return l.p, nil
 }
@@ -51,7 +69,7 @@ func (l *lowering) name(pos token.Pos) {
 	for _, name := range sorted(l.u.objects) {
 		switch o := l.u.objects[name].(type) {
 		case *types.TypeName, *types.Func:
-			l.p.slots[o] = l.in.gens.fresh(name)
+			l.p.slots[o] = l.in.gens.fresh(strings.ReplaceAll(name, ".", "_"))
 		}
 	}
 	for _, v := range l.u.order {
@@ -67,10 +85,12 @@ func (l *lowering) name(pos token.Pos) {
 		if t == nil {
 			continue
 		}
-		l.p.vars = append(l.p.vars, &ast.GenDecl{Tok: token.VAR, TokPos: pos, Specs: []ast.Spec{
-			&ast.ValueSpec{Names: []*ast.Ident{{Name: slot, NamePos: pos}}, Type: t},
-		}})
+		l.p.vars = append(l.p.vars, varDecl(pos, slot, t))
 	}
+}
+
+func varDecl(pos token.Pos, name string, t ast.Expr) ast.Decl {
+	return &ast.GenDecl{Tok: token.VAR, TokPos: pos, Specs: []ast.Spec{&ast.ValueSpec{Names: []*ast.Ident{{Name: name, NamePos: pos}}, Type: t}}}
 }
 
 // slot returns the interpreter's name of a package-level object, or "".
@@ -100,13 +120,51 @@ func (l *lowering) decl(d ast.Decl) {
 			l.p.types = append(l.p.types, d)
 		}
 	case *ast.FuncDecl:
-		if d.Body == nil {
-			l.fail(d.Pos(), "func %s has no body", d.Name.Name)
-			return
-		}
-		l.rewrite(d)
-		l.p.funcs = append(l.p.funcs, d)
+		l.function(d)
 	}
+}
+
+// function lowers a function or method.
+func (l *lowering) function(d *ast.FuncDecl) {
+	name := d.Name.Name
+	from, to := d.Name.Pos(), d.End()
+	if recv, generic := receiver(d); recv != "" {
+		name = recv + "." + name
+		if fn, ok := l.u.objects[name].(*types.Func); ok && !generic {
+			d = l.method(d, fn)
+		}
+	}
+	l.rewrite(d)
+	l.mark(name, kernel+"at_"+strings.ReplaceAll(name, ".", "_"), from, to, d.Body)
+	l.p.funcs = append(l.p.funcs, d)
+}
+
+// uses returns the package-level objects of cells that a declaration mentions.
+func (l *lowering) uses(d ast.Decl) map[string]types.Object {
+	used := map[string]types.Object{}
+	ast.Inspect(d, func(n ast.Node) bool {
+		id, ok := n.(*ast.Ident)
+		if !ok {
+			return true
+		}
+		o := l.u.info.Uses[id]
+		if o == nil || o.Pkg() == nil || o.Pkg().Path() != "main" {
+			return true
+		}
+		key := o.Name()
+		if fn, ok := o.(*types.Func); ok && fn.Signature().Recv() != nil {
+			t := typeName(fn.Signature().Recv().Type())
+			if t == nil {
+				return true
+			}
+			key = t.Name() + "." + key
+		}
+		if e := l.in.names[key]; l.u.objects[key] == o || e != nil && e.obj == o {
+			used[key] = o
+		}
+		return true
+	})
+	return used
 }
 
 // body lowers the cell's statements: what they declare is assigned, and the last expression is shown.
@@ -122,7 +180,9 @@ func (l *lowering) body(fn *ast.FuncDecl) {
 		list = append(list, l.statement(s)...)
 	}
 	fn.Body.List = list
+	from, to := fn.Body.Pos(), fn.Body.End()
 	l.rewrite(fn.Body)
+	l.mark("", kernel+"at", from, to, fn.Body)
 	l.p.entry = l.in.gens.fresh(kernel + "cell")
 	fn.Name.Name = l.p.entry
 	l.p.funcs = append(l.p.funcs, fn)
@@ -185,10 +245,17 @@ func (l *lowering) show(fn *ast.FuncDecl) {
 
 // hook is a call of this package from a lowered cell.
 func (l *lowering) hook(name string, pos token.Pos, args ...ast.Expr) *ast.CallExpr {
-	return &ast.CallExpr{
+	call := &ast.CallExpr{
 		Fun:    &ast.SelectorExpr{X: &ast.Ident{Name: kernel, NamePos: pos}, Sel: &ast.Ident{Name: name, NamePos: pos}},
 		Lparen: pos, Args: args, Rparen: pos,
 	}
+	l.synthetic[call] = true
+	return call
+}
+
+// mark marks the places in a function's body; see marking.
+func (l *lowering) mark(name, variable string, from, to token.Pos, body *ast.BlockStmt) {
+	(&marking{l: l}).function(name, variable, from, to, body)
 }
 
 // prints reports whether a call is one of a function or method of fmt, io, os, bufio or log that returns the count of bytes
@@ -271,7 +338,7 @@ func (l *lowering) alias(p *types.Package) string {
 		l.in.aliases[p.Path()], l.in.aliasPath[a] = a, p.Path()
 	}
 	if !l.in.imported[a] {
-		l.used[a] = true
+		l.p.used[a] = true
 	}
 	return a
 }
@@ -289,8 +356,13 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		l.rename(n)
 	case *ast.CallExpr:
 		if id, ok := n.Fun.(*ast.Ident); ok && l.u.info.Uses[id] == types.Universe.Lookup("recover") {
+			l.synthetic[n] = true
 			c.Replace(l.hook("Recover", n.Pos(), n))
+			break
 		}
+		l.methodCall(n)
+	case *ast.GoStmt:
+		c.Replace(l.goStmt(n))
 	}
 	return true
 }
@@ -304,7 +376,9 @@ func (l *lowering) rename(id *ast.Ident) {
 		return
 	}
 	if s := l.slot(o); s != "" {
-		id.Name = s
+		if fn, ok := o.(*types.Func); !ok || fn.Signature().Recv() == nil {
+			id.Name = s
+		}
 		return
 	}
 	v, ok := o.(*types.Var)

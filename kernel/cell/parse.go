@@ -24,7 +24,7 @@ type decl struct {
 	cell, line, column int // where its text starts
 	text               string
 	node               ast.Decl
-	uses               map[string]bool // package-level names that it mentions
+	signature          string // of a method
 }
 
 // yaegi scopes imports by the base name of the file, so all cells have the same one.
@@ -84,6 +84,9 @@ func (d *decl) parse(fset *token.FileSet) error {
 		return fmt.Errorf("%d declarations where one was cut out: %q", len(f.Decls), d.text)
 	}
 	d.node = f.Decls[0]
+	if f, ok := d.node.(*ast.FuncDecl); ok {
+		d.signature = signature(f)
+	}
 	return nil
 }
 

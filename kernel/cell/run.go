@@ -9,6 +9,9 @@ import (
 	"sync"
 	"time"
 
+	"github.com/traefik/yaegi/interp"
+
+	"linewright/builtins/page"
 	"linewright/plotting"
 )
 
@@ -20,7 +23,9 @@ type run struct {
 	cellID string
 	out    Output
 	ctx    context.Context
-	cancel context.CancelFunc
+	cancel context.CancelCauseFunc
+
+	unlink func() bool // stops watching the caller's context
 
 	program *program
 	bundle  *plotting.Bundle // what the last expression showed
@@ -32,11 +37,16 @@ type run struct {
 
 func (in *Interpreter) begin(ctx context.Context, n int, code, cellID string, out Output) *run {
 	r := &run{in: in, n: n, code: code, cellID: cellID, out: out, shown: map[string]bool{}}
-	r.ctx, r.cancel = context.WithCancel(ctx)
+	// The cell's goroutines may outlive it, so its end does not cancel their context; an interrupt does.
+	r.ctx, r.cancel = context.WithCancelCause(context.WithoutCancel(ctx))
+	r.unlink = context.AfterFunc(ctx, func() { r.cancel(context.Cause(ctx)) })
 	in.current.Store(r)
-	in.attach()
+	page.Attach(host{in})
 	return r
 }
+
+// end is called when the cell has been answered.
+func (r *run) end() { r.unlink() }
 
 // execute calls the compiled cell.
 func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
@@ -45,14 +55,17 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 		return nil, nil
 	}
 	done := make(chan error, 1)
-	go func() { done <- in.vm.call(p.entry) }()
+	go func() {
+		defer in.goroutines.enter(r)()
+		done <- r.call(p.entry)
+	}()
 	select {
 	case err := <-done:
 		switch {
 		case r.ctx.Err() != nil:
 			return nil, r.interrupted()
 		case err != nil:
-			return nil, r.panicked(err)
+			return nil, err
 		case r.failure != nil:
 			return nil, r.failed(r.failure)
 		}
@@ -63,12 +76,29 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 	}
 }
 
+// call runs the cell's function in its own goroutine.
+func (r *run) call(entry string) error {
+	err := r.in.vm.call(entry)
+	var p interp.Panic
+	if errors.As(err, &p) {
+		return r.in.panicError(p.Value)
+	}
+	if err != nil {
+		msg := clean(err.Error())
+		return &Error{Name: "error", Value: msg, Trace: []string{msg}}
+	}
+	return nil
+}
+
 // patience is how long an interrupted cell may take to come to rest before the next one starts without waiting for it.
 const patience = time.Second
 
 // stop ends all interpreted code. It does not wait: the next cell does.
 func (in *Interpreter) stop(done <-chan error) {
 	id := in.vm.stop()
+	for _, r := range in.goroutines.runs() {
+		r.cancel(context.Canceled)
+	}
 	settled := make(chan struct{})
 	in.settled = settled
 	go func() {

@@ -33,5 +33,3 @@ func (in *Interpreter) show(values ...any) {
 	}
 	r.bundle = &b
 }
-
-func (in *Interpreter) recovered(v any) any { return v }

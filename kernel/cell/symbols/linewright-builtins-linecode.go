@@ -13,13 +13,36 @@ import (
 func init() {
 	Symbols["linewright/builtins/linecode/linecode"] = map[string]reflect.Value{
 		// function, constant and variable definitions
-		"AMI": reflect.ValueOf(linecode.AMI),
-		"New": reflect.ValueOf(linecode.New),
+		"AMI":             reflect.ValueOf(linecode.AMI),
+		"BiphaseL":        reflect.ValueOf(linecode.BiphaseL),
+		"BiphaseM":        reflect.ValueOf(linecode.BiphaseM),
+		"BiphaseS":        reflect.ValueOf(linecode.BiphaseS),
+		"BitStuffing":     reflect.ValueOf(linecode.BitStuffing),
+		"ByName":          reflect.ValueOf(linecode.ByName),
+		"CMI":             reflect.ValueOf(linecode.CMI),
+		"Code2B1Q":        reflect.ValueOf(linecode.Code2B1Q),
+		"Code4B5B":        reflect.ValueOf(linecode.Code4B5B),
+		"Code8b10b":       reflect.ValueOf(linecode.Code8b10b),
+		"DelayModulation": reflect.ValueOf(linecode.DelayModulation),
+		"HDB3":            reflect.ValueOf(linecode.HDB3),
+		"HDLC":            reflect.ValueOf(linecode.HDLC),
+		"MLT3":            reflect.ValueOf(linecode.MLT3),
+		"Manchester8023":  reflect.ValueOf(linecode.Manchester8023),
+		"NRZM":            reflect.ValueOf(linecode.NRZM),
+		"NRZS":            reflect.ValueOf(linecode.NRZS),
+		"Names":           reflect.ValueOf(linecode.Names),
+		"New":             reflect.ValueOf(linecode.New),
+		"PolarNRZ":        reflect.ValueOf(linecode.PolarNRZ),
+		"PolarRZ":         reflect.ValueOf(linecode.PolarRZ),
+		"Pseudoternary":   reflect.ValueOf(linecode.Pseudoternary),
+		"UnipolarNRZ":     reflect.ValueOf(linecode.UnipolarNRZ),
+		"UnipolarRZ":      reflect.ValueOf(linecode.UnipolarRZ),
 
 		// type definitions
-		"Chain": reflect.ValueOf((*linecode.Chain)(nil)),
-		"Code":  reflect.ValueOf((*linecode.Code)(nil)),
-		"Edge":  reflect.ValueOf((*linecode.Edge)(nil)),
-		"Spec":  reflect.ValueOf((*linecode.Spec)(nil)),
+		"Chain":   reflect.ValueOf((*linecode.Chain)(nil)),
+		"Code":    reflect.ValueOf((*linecode.Code)(nil)),
+		"Edge":    reflect.ValueOf((*linecode.Edge)(nil)),
+		"Spec":    reflect.ValueOf((*linecode.Spec)(nil)),
+		"Verdict": reflect.ValueOf((*linecode.Verdict)(nil)),
 	}
 }

@@ -1,0 +1,150 @@
+package cell
+
+import (
+	"fmt"
+	"go/ast"
+	"go/token"
+	"go/types"
+	"strings"
+	"sync"
+	"sync/atomic"
+)
+
+// goroutines are those that cells have started with a go statement, and the cells' own main ones. Each belongs to the run
+// that started it: what it prints goes there.
+type goroutines struct {
+	others atomic.Int64 // beside the running cell's own
+	mu     sync.Mutex
+	of     map[uint64]*run
+}
+
+// here returns the run that the calling goroutine belongs to; the running cell for goroutines of compiled code.
+func (in *Interpreter) here() *run {
+	if in.goroutines.others.Load() > 0 {
+		g := goroutine()
+		in.goroutines.mu.Lock()
+		defer in.goroutines.mu.Unlock()
+		if r := in.goroutines.of[g]; r != nil {
+			return r
+		}
+	}
+	return in.current.Load()
+}
+
+// enter makes the calling goroutine one of r; the result undoes it.
+func (g *goroutines) enter(r *run) (leave func()) {
+	id := goroutine()
+	g.mu.Lock()
+	defer g.mu.Unlock()
+	g.of[id] = r
+	return func() {
+		g.mu.Lock()
+		defer g.mu.Unlock()
+		delete(g.of, id)
+	}
+}
+
+// runs returns the runs that have goroutines.
+func (g *goroutines) runs() []*run {
+	g.mu.Lock()
+	defer g.mu.Unlock()
+	seen := map[*run]bool{}
+	var list []*run
+	for _, r := range g.of {
+		if !seen[r] {
+			seen[r] = true
+			list = append(list, r)
+		}
+	}
+	return list
+}
+
+// start is the go statement of cells. A panic there must not end the kernel; it belongs to no cell that runs, so it is
+// reported and fails none.
+func (in *Interpreter) start(f func()) {
+	r := in.here()
+	in.goroutines.others.Add(1)
+	go func() {
+		defer in.goroutines.others.Add(-1)
+		defer in.goroutines.enter(r)()
+		defer func() {
+			if v := recover(); v != nil {
+				e := in.panicError(v)
+				r.out.Stream("stderr", []byte("goroutine: "+strings.Join(e.Trace, "\n")+"\n"))
+			}
+		}()
+		f()
+	}()
+}
+
+// goStmt evaluates the function and the arguments now and hands the call to start.
+func (l *lowering) goStmt(g *ast.GoStmt) ast.Stmt {
+	pos := g.Pos()
+	call := g.Call
+	block := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
+	keep := func(x ast.Expr) ast.Expr {
+		tv := l.u.info.Types[x]
+		if _, lit := x.(*ast.BasicLit); lit || tv.Value != nil || tv.IsNil() {
+			return x
+		}
+		id := l.temp(pos)
+		block.List = append(block.List, &ast.AssignStmt{Lhs: []ast.Expr{id}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{x}})
+		return &ast.Ident{Name: id.Name, NamePos: pos}
+	}
+	switch f := ast.Unparen(call.Fun).(type) {
+	case *ast.Ident:
+		if _, variable := l.u.info.Uses[f].(*types.Var); variable {
+			call.Fun = keep(f)
+		}
+	case *ast.SelectorExpr:
+		if sel := l.u.info.Selections[f]; sel != nil && sel.Kind() == types.MethodVal {
+			if _, ptr := sel.Recv().Underlying().(*types.Pointer); !ptr && l.u.info.Types[f.X].Addressable() {
+				f.X = keep(&ast.ParenExpr{Lparen: pos, X: &ast.UnaryExpr{OpPos: pos, Op: token.AND, X: f.X}, Rparen: pos})
+			} else {
+				f.X = keep(f.X)
+			}
+		} else if sel != nil {
+			call.Fun = keep(f)
+		}
+	case *ast.FuncLit:
+	default:
+		if tv := l.u.info.Types[call.Fun]; tv.IsValue() {
+			call.Fun = keep(call.Fun)
+		}
+	}
+	if len(call.Args) == 1 {
+		if t, ok := l.u.info.TypeOf(call.Args[0]).(*types.Tuple); ok {
+			as := &ast.AssignStmt{TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{call.Args[0]}}
+			call.Args = nil
+			for range t.Len() {
+				id := l.temp(pos)
+				as.Lhs = append(as.Lhs, id)
+				call.Args = append(call.Args, &ast.Ident{Name: id.Name, NamePos: pos})
+			}
+			block.List = append(block.List, as)
+		}
+	}
+	for i, a := range call.Args {
+		if id, ok := a.(*ast.Ident); ok && l.made(id) {
+			continue
+		}
+		call.Args[i] = keep(a)
+	}
+	lit := &ast.FuncLit{
+		Type: &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}},
+		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{&ast.ExprStmt{X: call}}, Rbrace: call.End()},
+	}
+	if f, ok := call.Fun.(*ast.FuncLit); ok && len(call.Args) == 0 && f.Type.Results == nil {
+		lit = f
+	}
+	block.List = append(block.List, &ast.ExprStmt{X: l.hook("Go", pos, lit)})
+	return block
+}
+
+// temp makes a variable that no cell can name.
+func (l *lowering) temp(pos token.Pos) *ast.Ident {
+	l.temps++
+	return &ast.Ident{Name: fmt.Sprintf("%st%d", kernel, l.temps), NamePos: pos}
+}
+
+func (l *lowering) made(id *ast.Ident) bool { return strings.HasPrefix(id.Name, kernel+"t") }

@@ -1,0 +1,136 @@
+package cell
+
+import (
+	"fmt"
+	"go/ast"
+	"go/token"
+	"go/types"
+)
+
+// A method T.M of a cell becomes a function, which the interpreter calls five times as fast, a variable that holds it, and
+// a method that calls the variable, for interfaces and method values. So a method that is defined again reaches every
+// value of its type: yaegi itself ignores the second definition.
+
+// method returns the function of a method, and declares the variable and the method that calls it if they are new.
+func (l *lowering) method(d *ast.FuncDecl, fn *types.Func) *ast.FuncDecl {
+	f := asFunction(d, l.p.slots[fn])
+	variable, ok := l.in.methods[fn]
+	if !ok {
+		if t := l.typeExpr(methodFunc(fn), d.Pos()); t != nil {
+			variable = l.in.gens.fresh(kernel + "m")
+			l.in.methods[fn] = variable
+			l.p.vars = append(l.p.vars, varDecl(d.Pos(), variable, t))
+			l.p.funcs = append(l.p.funcs, l.trampoline(d, fn, variable))
+		}
+	}
+	l.sets = append(l.sets, [2]string{variable, f.Name.Name})
+	return f
+}
+
+// methodFunc is a method's type as that of a function with the receiver first.
+func methodFunc(fn *types.Func) *types.Signature {
+	sig := fn.Signature()
+	params := []*types.Var{types.NewParam(token.NoPos, nil, "", sig.Recv().Type())}
+	for v := range sig.Params().Variables() {
+		params = append(params, v)
+	}
+	return types.NewSignatureType(nil, nil, nil, types.NewTuple(params...), sig.Results(), sig.Variadic())
+}
+
+// trampoline is the method that calls the variable. All of it stands at the word func, which lies in no function's place.
+func (l *lowering) trampoline(d *ast.FuncDecl, fn *types.Func, variable string) ast.Decl {
+	pos := d.Pos()
+	sig := fn.Signature()
+	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
+	arg := func(i int) *ast.Ident { return id(fmt.Sprintf("%sa%d", kernel, i)) }
+	call := &ast.CallExpr{Fun: id(variable), Lparen: pos, Args: []ast.Expr{arg(0)}, Rparen: pos}
+	t, ok := l.typeExpr(sig, pos).(*ast.FuncType)
+	if !ok {
+		return &ast.FuncDecl{}
+	}
+	for i, f := range t.Params.List {
+		f.Names = []*ast.Ident{arg(i + 1)}
+		call.Args = append(call.Args, arg(i+1))
+	}
+	if sig.Variadic() {
+		call.Ellipsis = pos
+	}
+	var body ast.Stmt = &ast.ExprStmt{X: call}
+	if sig.Results().Len() > 0 {
+		body = &ast.ReturnStmt{Return: pos, Results: []ast.Expr{call}}
+	}
+	return &ast.FuncDecl{
+		Recv: &ast.FieldList{Opening: pos, List: []*ast.Field{{Names: []*ast.Ident{arg(0)}, Type: l.typeExpr(sig.Recv().Type(), pos)}}, Closing: pos},
+		Name: id(fn.Name()), Type: t, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{body}, Rbrace: pos},
+	}
+}
+
+// setup makes the function that fills the methods' variables.
+func (l *lowering) setup(pos token.Pos) {
+	if len(l.sets) == 0 {
+		return
+	}
+	l.p.setup = l.in.gens.fresh(kernel + "set")
+	body := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
+	for _, s := range l.sets {
+		body.List = append(body.List, &ast.AssignStmt{
+			Lhs: []ast.Expr{&ast.Ident{Name: s[0], NamePos: pos}}, TokPos: pos, Tok: token.ASSIGN,
+			Rhs: []ast.Expr{&ast.Ident{Name: s[1], NamePos: pos}},
+		})
+	}
+	l.p.funcs = append(l.p.funcs, &ast.FuncDecl{
+		Name: &ast.Ident{Name: l.p.setup, NamePos: pos},
+		Type: &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}}, Body: body,
+	})
+}
+
+// methodCall turns x.M(...) into a call of the method's function.
+func (l *lowering) methodCall(call *ast.CallExpr) {
+	s, ok := ast.Unparen(call.Fun).(*ast.SelectorExpr)
+	if !ok {
+		return
+	}
+	sel := l.u.info.Selections[s]
+	if sel == nil || sel.Kind() != types.MethodVal {
+		return
+	}
+	fn, ok := sel.Obj().(*types.Func)
+	if !ok || l.slot(fn) == "" {
+		return
+	}
+	if len(call.Args) == 1 {
+		if t, ok := l.u.info.TypeOf(call.Args[0]).(*types.Tuple); ok && t.Len() > 0 {
+			return // f(g()) with several values of g takes no receiver beside them
+		}
+	}
+	pos := s.Sel.Pos()
+	recv, t := l.path(s.X, sel.Recv(), sel.Index()[:len(sel.Index())-1])
+	_, isPtr := types.Unalias(t).(*types.Pointer)
+	_, wantPtr := fn.Signature().Recv().Type().(*types.Pointer)
+	switch {
+	case isPtr && !wantPtr:
+		recv = &ast.StarExpr{Star: s.X.Pos(), X: recv}
+	case !isPtr && wantPtr:
+		recv = &ast.UnaryExpr{OpPos: s.X.Pos(), Op: token.AND, X: recv}
+	}
+	call.Fun = &ast.Ident{Name: l.slot(fn), NamePos: pos}
+	call.Args = append([]ast.Expr{recv}, call.Args...)
+}
+
+// path follows embedded fields.
+func (l *lowering) path(x ast.Expr, t types.Type, index []int) (ast.Expr, types.Type) {
+	for _, i := range index {
+		u := t.Underlying()
+		if p, ok := u.(*types.Pointer); ok {
+			u = p.Elem().Underlying()
+		}
+		f := u.(*types.Struct).Field(i)
+		name := f.Name()
+		if s := l.slot(typeName(f.Type())); f.Embedded() && s != "" {
+			name = s
+		}
+		x = &ast.SelectorExpr{X: x, Sel: &ast.Ident{Name: name, NamePos: x.End()}}
+		t = f.Type()
+	}
+	return x, t
+}
