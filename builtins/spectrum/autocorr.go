@@ -4,14 +4,16 @@ import (
 	"context"
 	"fmt"
 	"math"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // Costs in nanoseconds, measured on one core of the kind of machine that this was written on. They only choose between
 // routes.
 const (
-	lagCost  = 0.5 // one lag at one frequency
-	rankCost = 3.0 // one product of the triangular solve at one frequency
-	points   = 1001
+	lagCost   = 0.5 // one lag at one frequency
+	rankCost  = 3.0 // one product of the triangular solve at one frequency
+	startCost = 250 // a resolvent at one frequency, whatever its rank
 )
 
 // Limits of the routes: products of the recursion that are spent before long memories are tried as a resolvent of any
@@ -37,15 +39,15 @@ const (
 // soon, the functions K^q f by then live on a few slow directions, and a resolvent on these takes the rest.
 func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 	a := newAutocorr(p)
-	check := 64
+	check := 32
 	for q := 0; ; q++ {
-		if err := ctx.Err(); err != nil {
+		if ctx.Err() != nil {
 			return nil, context.Cause(ctx)
 		}
 		lags := q * p.length
-		bound := a.bound()
-		if lags >= first {
-			if bound*float64(q+8) <= 1e-17*a.power() {
+		if lags >= first && recentred(q) {
+			bound := a.bound()
+			if bound*float64(q+8) <= 1e-16*a.power() {
 				return newForm(p.width, a.trim(), nil), nil
 			}
 			if lags >= check {
@@ -80,57 +82,32 @@ type autocorr struct {
 }
 
 func newAutocorr(p *process) *autocorr {
-	m, w, row := p.machine, p.width, p.length*p.width
-	a := &autocorr{p: p, lags: make([][]float64, w*w), next: make([]float64, m.states)}
-	a.f, a.u = vectors(row, m.states), vectors(row, m.states)
-	for i := range a.lags {
-		a.lags[i] = make([]float64, 2*p.length)
-	}
-	scale := 0.0
-	for i, e := range m.edges {
-		mass := p.pi[e.from] * e.p
-		out := p.out[i*row : (i+1)*row]
-		for n, v := range out {
-			a.f[n][e.from] += e.p * v
-			a.u[n][e.to] += mass * v
-			scale = max(scale, math.Abs(v))
+	m, w := p.machine, p.width
+	a := &autocorr{p: p, lags: vectors(w*w, 2*p.length), next: make([]float64, m.states)}
+	a.f, a.u = vectors(len(p.out), m.states), vectors(len(p.out), m.states)
+	weighed := make([]float64, len(m.edges))
+	for n, v := range p.out {
+		floats.MulTo(weighed, p.mass, v)
+		f, u := a.f[n], a.u[n]
+		for s := range f {
+			lo, hi := p.head[s], p.head[s+1]
+			f[s] = floats.Dot(p.p[lo:hi], v[lo:hi])
 		}
-		for n, v := range out {
-			if v == 0 {
-				continue
-			}
-			v *= mass
-			k, j := n/w, n%w
-			for n2 := k * w; n2 < row; n2++ {
-				a.lags[j*w+n2%w][n2/w-k] += v * out[n2]
-			}
+		for i, x := range weighed {
+			u[m.edges[i].to] += x
 		}
-	}
-	for i := range a.lags {
-		for l := range a.lags[i] {
-			a.lags[i][l] /= float64(p.length)
+		k, j := n/w, n%w
+		for n2 := k * w; n2 < len(p.out); n2++ {
+			a.lags[j*w+n2%w][n2/w-k] += floats.Dot(weighed, p.out[n2]) / float64(p.length)
 		}
-	}
-	for n := range a.f {
-		if top := largest(a.f[n]); top <= 1e-15*scale {
+		if largest(f) <= 1e-15*largest(v) {
 			a.f[n] = nil
 		}
-		for s, v := range a.u[n] {
-			a.u[n][s] = v / float64(p.length)
-			a.size += math.Abs(v)
-		}
+		floats.Scale(1/float64(p.length), u)
+		a.size += floats.Norm(u, 1)
 	}
 	a.step1 = newSparse(p)
 	return a
-}
-
-func vectors(n, size int) [][]float64 {
-	all := make([]float64, n*size)
-	v := make([][]float64, n)
-	for i := range v {
-		v[i] = all[i*size : (i+1)*size : (i+1)*size]
-	}
-	return v
 }
 
 func largest(v []float64) float64 {
@@ -173,14 +150,9 @@ func (a *autocorr) step(q int) {
 		}
 		k, j := n/w, n%w
 		for m, u := range a.u {
-			i := m / w
-			sum := 0.0
-			for s, v := range f {
-				sum += u[s] * v
-			}
-			a.lags[m%w*w+j][p.length*(q+1)+k-i] += sum
+			a.lags[m%w*w+j][p.length*(q+1)+k-m/w] += floats.Dot(u, f)
 		}
-		a.step1.apply(a.next, f)
+		a.step1.apply(a.next, f, recentred(q))
 		a.f[n], a.next = a.next, f
 		a.work += float64(len(a.step1.to) + len(a.u)*len(f))
 	}
@@ -188,7 +160,7 @@ func (a *autocorr) step(q int) {
 
 // trim drops lags at the end that are too small to matter.
 func (a *autocorr) trim() [][]float64 {
-	least := 1e-18 * a.power()
+	least := 1e-17 * a.power()
 	n := 1
 	for _, lags := range a.lags {
 		for l, r := range lags {
@@ -215,15 +187,16 @@ func (a *autocorr) resolve(ctx context.Context, q int, bound float64) (*resolven
 	if a.tried > 0 {
 		rate := math.Log(a.tried/bound) / float64(q-a.at)
 		left := math.Log(bound/(1e-17*a.power())) / max(rate, 1e-9) * float64(a.p.length)
-		rank = int(math.Sqrt(left * lagCost / rankCost))
+		for rank < a.rank() && resolventCost(rank+1, len(a.f)) < left*lagCost {
+			rank++
+		}
 	}
 	a.tried, a.at = bound, q
 	if a.work > easyWork && !a.large {
 		a.large = true
-		rank = mostRank
+		rank = a.rank()
 	}
-	rank = min(rank, a.rank())
-	if rank < 2 {
+	if rank == 0 {
 		return nil, nil
 	}
 	return newResolvent(ctx, a, q, rank)
@@ -260,22 +233,28 @@ func newSparse(p *process) sparse {
 	return k
 }
 
-// apply sets dst to K v. Taking the means off first keeps rounding from feeding the directions that K does not have.
-func (k *sparse) apply(dst, v []float64) {
+// recentred tells whether step q takes off the means that rounding has brought in: the first steps do, which may end
+// the sum at once, then every eighth.
+func recentred(q int) bool { return q < 8 || q%8 == 0 }
+
+// apply sets dst to K v. For functions of mean 0 on every cyclic class that is P v; centre takes the means off first.
+func (k *sparse) apply(dst, v []float64, centre bool) {
 	p := k.p
-	clear(k.mean)
-	for s, x := range v {
-		k.mean[p.cyc[s]] += p.pi[s] * x
-	}
-	for s, x := range v {
-		k.work[s] = x - float64(p.period)*k.mean[p.cyc[s]]
+	if centre {
+		clear(k.mean)
+		for s, x := range v {
+			k.mean[p.cyc[s]] += p.pi[s] * x
+		}
+		for s, x := range v {
+			k.work[s] = x - float64(p.period)*k.mean[p.cyc[s]]
+		}
+		v = k.work
 	}
 	lo := k.head[0]
-	for s := range dst {
-		hi := k.head[s+1]
+	for s, hi := range k.head[1:] {
 		sum := 0.0
 		for i := lo; i < hi; i++ {
-			sum += k.v[i] * k.work[k.to[i]]
+			sum += k.v[i] * v[k.to[i]]
 		}
 		dst[s] = sum
 		lo = hi

@@ -13,6 +13,36 @@ type form struct {
 	even  []series    // of pairs i <= j, row by row
 	odd   []series    // of pairs i < j in the same order; unused entries are empty
 	rest  *resolvent  // what the lags leave; nil if that is nothing
+	lift  int         // the form is that of running sums: it takes (2 sin(t/2))^2 to this power
+}
+
+// raised is the form of a process of one component whose running sums, taken order times, have the form sums:
+// differences of the lags, R(l) = 2 R'(l) - R'(l-1) - R'(l+1) each time. It needs order more lags than it gives.
+func (sums *form) raised(order int) *form {
+	r := sums.lags[0]
+	for range order {
+		at := func(l int) float64 {
+			if l >= len(r) {
+				return 0
+			}
+			return r[l]
+		}
+		next := make([]float64, len(r)+1)
+		for l := range next {
+			next[l] = 2*at(l) - at(max(l-1, 1-l)) - at(l+1)
+		}
+		r = next
+	}
+	return &form{width: 1, lags: [][]float64{r}, even: sums.even, odd: sums.odd, rest: sums.rest, lift: order}
+}
+
+// raise is the factor of the lift at the angle t.
+func (f *form) raise(t angle) float64 {
+	lift := 1.0
+	for range f.lift {
+		lift *= 4 * t.half * t.half
+	}
+	return lift
 }
 
 func newForm(width int, lags [][]float64, rest *resolvent) *form {
@@ -61,6 +91,9 @@ func (f *form) at(t angle, h []complex128) float64 {
 	if f.rest != nil {
 		sum += f.rest.at(t, h)
 	}
+	if f.lift > 0 {
+		sum *= f.raise(t)
+	}
 	return sum
 }
 
@@ -73,11 +106,16 @@ func (f *form) scalar(dst []float64, t []angle) {
 			dst[i] += f.rest.at(t[i], h)
 		}
 	}
+	if f.lift > 0 {
+		for i := range dst {
+			dst[i] *= f.raise(t[i])
+		}
+	}
 }
 
 // cost estimates the nanoseconds of one value.
 func (f *form) cost() float64 {
-	ns := lagCost * float64(f.width*f.width*len(f.lags[0]))
+	ns := lagCost * float64(f.width*f.width*len(f.even[0].a))
 	if f.rest != nil {
 		ns += f.rest.cost()
 	}
@@ -85,3 +123,22 @@ func (f *form) cost() float64 {
 }
 
 func square(z complex128) float64 { return real(z)*real(z) + imag(z)*imag(z) }
+
+// matrix adds prob times the spectral matrix at the angle t to column k of dst: with S_ij = C - jD, C goes to (i, j) for
+// i <= j and D to (j, i).
+func (f *form) matrix(t angle, dst [][]float64, k int, prob float64) {
+	prob *= f.raise(t)
+	n := 0
+	for i := range f.width {
+		for j := i; j < f.width; j++ {
+			dst[i*f.width+j][k] += prob * f.even[n].even(t)
+			if i != j {
+				dst[j*f.width+i][k] += prob * f.odd[n].odd(t)
+			}
+			n++
+		}
+	}
+	if f.rest != nil {
+		f.rest.matrix(t, dst, k, prob)
+	}
+}

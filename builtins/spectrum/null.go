@@ -5,6 +5,8 @@ import (
 	"math"
 	"math/cmplx"
 
+	"gonum.org/v1/gonum/floats"
+
 	"linewright/builtins/pulse"
 )
 
@@ -42,12 +44,31 @@ const (
 	nearPart    = 0.05 // of the mean density below which the near form is used
 )
 
-// nearNull returns the form for a density that vanishes at 0 Hz, nil if it does not.
-func nearNull(ctx context.Context, p *process, basis []pulse.Shape, scale float64) (*null, error) {
-	var n *null
+// densities returns the form of the symbols' process, with at least so many lags, and, where it loses its digits near
+// 0 Hz, the form to be used there: nil if none is needed.
+func (p *process) densities(ctx context.Context, basis []pulse.Shape, scale float64, lags int) (*form, *null, error) {
+	near, q := p.null(basis, scale)
+	if near != nil {
+		var err error
+		if near.form, err = q.spectral(ctx, lags+near.order); err != nil {
+			return nil, nil, err
+		}
+		if near.taylr == nil {
+			// Unless the sums are much larger than the levels, their form has all the digits everywhere.
+			top := max(near.form.power(0), near.form.at(newAngle(0), []complex128{1}))
+			if math.Pow(4, float64(near.order))*top < 1e3*p.variance() {
+				return near.form.raised(near.order), nil, nil
+			}
+		}
+	}
+	f, err := p.spectral(ctx, lags)
+	return f, near, err
+}
+
+// null says how the density vanishes at 0 Hz and which process takes its place there; nil if it does not vanish.
+func (p *process) null(basis []pulse.Shape, scale float64) (*null, *process) {
 	if p.width == 1 {
-		q := p
-		order := 0
+		q, order := p, 0
 		for order < mostOrder {
 			x, ok := q.sums(q.out)
 			if !ok {
@@ -63,50 +84,40 @@ func nearNull(ctx context.Context, p *process, basis []pulse.Shape, scale float6
 		if order == 0 {
 			return nil, nil
 		}
-		n = &null{order: order, reach: nearReach}
-		p = q
-	} else {
-		x, d, order := p.areas(basis)
-		if order == 0 {
-			return nil, nil
-		}
-		far := 1.0
-		for _, s := range basis {
-			from, to := s.Support()
-			far = max(far, -from, to)
-		}
-		n = &null{order: order, taylr: d, reach: 0.5 / (2 * math.Pi * far)}
-		p = p.join(x)
+		return &null{order: order, reach: nearReach}, q
 	}
-	var err error
-	n.form, err = p.spectral(ctx, 0)
-	return n, err
+	x, d, order := p.areas(basis)
+	if order == 0 {
+		return nil, nil
+	}
+	far := 1.0
+	for _, s := range basis {
+		from, to := s.Support()
+		far = max(far, -from, to)
+	}
+	return &null{order: order, taylr: d, reach: 0.5 / (2 * math.Pi * far)}, p.join(x)
 }
 
 // sums returns the running sums of a scalar that the edges emit, before each position, if they are bounded: then the sum
 // is a function of the state. The scalar must have mean 0.
-func (l *chainLaw) sums(b []float64) ([]float64, bool) {
+func (l *chainLaw) sums(b [][]float64) ([][]float64, bool) {
 	m := l.machine
-	n := l.length
 	total := make([]float64, len(m.edges))
 	top := 0.0
-	for i := range m.edges {
-		for _, v := range b[i*n : (i+1)*n] {
-			total[i] += v
-			top = max(top, math.Abs(v))
-		}
+	for _, v := range b {
+		floats.Add(total, v)
+		top += largest(v)
 	}
-	x, ok := l.potential(total, top*float64(n))
+	x, ok := l.potential(total, top)
 	if !ok {
 		return nil, false
 	}
-	out := make([]float64, len(b))
-	for i, e := range m.edges {
-		sum := x[e.from]
-		for k := range n {
-			out[i*n+k] = sum
-			sum += b[i*n+k]
-		}
+	out := vectors(len(b), len(m.edges))
+	for i := range m.edges {
+		out[0][i] = x[m.edges[i].from]
+	}
+	for k := 1; k < len(b); k++ {
+		floats.AddTo(out[k], out[k-1], b[k-1])
 	}
 	return out, true
 }
@@ -119,12 +130,11 @@ func (l *chainLaw) potential(gain []float64, scale float64) ([]float64, bool) {
 	x := make([]float64, m.states)
 	known := make([]bool, m.states)
 	known[0] = true
-	head, order := l.outgoing()
 	queue := []int32{0}
 	for len(queue) > 0 {
 		s := queue[0]
 		queue = queue[1:]
-		for _, i := range order[head[s]:head[s+1]] {
+		for i := l.head[s]; i < l.head[s+1]; i++ {
 			t := m.edges[i].to
 			v := x[s] + gain[i]
 			if !known[t] {
@@ -139,28 +149,9 @@ func (l *chainLaw) potential(gain []float64, scale float64) ([]float64, bool) {
 	return x, true
 }
 
-// outgoing lists the numbers of the edges by the state that they leave.
-func (l *chainLaw) outgoing() (head, order []int32) {
-	m := l.machine
-	head = make([]int32, m.states+1)
-	for _, e := range m.edges {
-		head[e.from+1]++
-	}
-	for s := range m.states {
-		head[s+1] += head[s]
-	}
-	fill := append([]int32(nil), head[:m.states]...)
-	order = make([]int32, len(m.edges))
-	for i, e := range m.edges {
-		order[fill[e.from]] = int32(i)
-		fill[e.from]++
-	}
-	return head, order
-}
-
 // areas goes from order to order as the comment of null says and returns the last x, the coefficients of D_j and the
 // order that was reached.
-func (p *process) areas(basis []pulse.Shape) (x []float64, d [][]float64, order int) {
+func (p *process) areas(basis []pulse.Shape) (x, d [][]float64, order int) {
 	d = make([][]float64, len(basis))
 	for j, s := range basis {
 		d[j] = make([]float64, taylorTerms)
@@ -174,12 +165,13 @@ func (p *process) areas(basis []pulse.Shape) (x []float64, d [][]float64, order 
 		}
 	}
 	unit := rectangle() // coefficients of (1/z - 1)^k E
-	x = make([]float64, len(p.out)/p.width)
+	x = vectors(p.length, len(p.mass))
 	for order < mostOrder {
-		b := append([]float64(nil), x...)
-		for n := range b {
+		b := vectors(p.length, len(p.mass))
+		for k := range b {
+			copy(b[k], x[k])
 			for j := range d {
-				b[n] += d[j][order] * p.out[n*p.width+j]
+				floats.AddScaled(b[k], d[j][order], p.out[k*p.width+j])
 			}
 		}
 		next, ok := p.sums(b)
@@ -226,14 +218,13 @@ func advance(c []float64) []float64 {
 }
 
 // join is the process of the vector (x, c).
-func (p *process) join(x []float64) *process {
-	w := p.width + 1
-	out := make([]float64, 0, len(x)*w)
-	for n, v := range x {
+func (p *process) join(x [][]float64) *process {
+	var out [][]float64
+	for k, v := range x {
 		out = append(out, v)
-		out = append(out, p.out[n*p.width:(n+1)*p.width]...)
+		out = append(out, p.out[k*p.width:(k+1)*p.width]...)
 	}
-	return p.process(w, out)
+	return p.process(p.width+1, out)
 }
 
 // at is the form at the angle t; energy is |G|^2 at the full frequency, which only one pulse needs.

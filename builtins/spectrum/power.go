@@ -6,6 +6,7 @@ import (
 	"math"
 	"sync"
 
+	"gonum.org/v1/gonum/floats"
 	"gonum.org/v1/gonum/integrate/quad"
 )
 
@@ -17,7 +18,7 @@ type plan struct {
 	edges  []float64 // of the panels: 0 = edges[0] < edges[1] < ... = 1/2
 	nu     []float64 // 16 points a panel
 	weight []float64
-	matrix [][]float64 // at the points, as the method matrix has it
+	matrix [][]float64 // at the points, as form.matrix has it
 }
 
 const rule = 16
@@ -63,7 +64,7 @@ func (p *PSD) quadrature() *plan {
 		q := p.panels(start, want)
 		got := 0.0
 		for i := range p.basis {
-			got += 2 * dot(q.weight, q.matrix[i*len(p.basis)+i])
+			got += 2 * floats.Dot(q.weight, q.matrix[i*len(p.basis)+i])
 		}
 		if math.Abs(got-want) <= 1e-10*want {
 			p.plan = q
@@ -90,10 +91,15 @@ func (p *PSD) panels(start int, power float64) *plan {
 		x, weight := legendre()
 		s := panel{lo: lo, hi: hi, at: vectors(w*w, rule)}
 		for k := range x {
-			p.matrix(lo+(hi-lo)*x[k], s.at, k)
+			t := newAngle(lo + (hi-lo)*x[k])
+			for _, c := range p.parts {
+				if c.form != nil {
+					c.form.matrix(t, s.at, k, c.prob)
+				}
+			}
 		}
 		for i := range w {
-			s.sum += (hi - lo) * dot(weight, s.at[i*w+i])
+			s.sum += (hi - lo) * floats.Dot(weight, s.at[i*w+i])
 		}
 		return s
 	}
@@ -123,31 +129,6 @@ func (p *PSD) panels(start int, power float64) *plan {
 		}
 	}
 	return q
-}
-
-// matrix puts the average spectral matrix at nu into column k of dst: S_ij = C - jD as C at (i, j), i <= j, and D at
-// (j, i).
-func (p *PSD) matrix(nu float64, dst [][]float64, k int) {
-	w := len(p.basis)
-	t := newAngle(nu)
-	for _, c := range p.parts {
-		if c.form == nil {
-			continue
-		}
-		n := 0
-		for i := range w {
-			for j := i; j < w; j++ {
-				dst[i*w+j][k] += c.prob * c.form.even[n].even(t)
-				if i != j {
-					dst[j*w+i][k] += c.prob * c.form.odd[n].odd(t)
-				}
-				n++
-			}
-		}
-		if c.form.rest != nil {
-			c.form.rest.matrix(t, dst, k, c.prob)
-		}
-	}
 }
 
 // whole is the continuous power in n <= nu < n+1, one-sided, in squared volts of the drive.
@@ -205,7 +186,7 @@ func (p *PSD) band(ctx context.Context, q *plan, lo, hi float64) float64 {
 			nu[k] = a + (b-a)*x[k]
 		}
 		p.evaluate(ctx, v, nu)
-		sum += 2 * (b - a) * dot(weight, v)
+		sum += 2 * (b - a) * floats.Dot(weight, v)
 	}
 	for i := 1; i < len(q.edges); i++ {
 		piece(n+q.edges[i-1], n+q.edges[i])

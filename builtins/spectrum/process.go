@@ -2,11 +2,15 @@ package spectrum
 
 import (
 	"context"
+	"slices"
+
+	"gonum.org/v1/gonum/floats"
 
 	"linewright/builtins/internal/markov"
 )
 
-// A chainLaw is what the processes on one irreducible machine have in common.
+// A chainLaw is what the processes on one irreducible machine have in common. Its edges are sorted by the state that
+// they leave: those of state s are head[s] .. head[s+1]-1.
 type chainLaw struct {
 	machine *machine
 	length  int // symbols a step
@@ -14,6 +18,33 @@ type chainLaw struct {
 	period  int   // of the chain, in steps
 	cyc     []int // cyclic class of each state
 	pi      []float64
+	head    []int32
+	p       []float64 // probability of each edge given its state
+	mass    []float64 // probability of each edge
+}
+
+func newLaw(ctx context.Context, m *machine, length int) (*chainLaw, error) {
+	byState := func(a, b edge) int { return int(a.from - b.from) }
+	if !slices.IsSortedFunc(m.edges, byState) {
+		slices.SortStableFunc(m.edges, byState)
+	}
+	l := &chainLaw{machine: m, length: length, graph: m.graph()}
+	l.period, l.cyc = l.graph.Period()
+	var err error
+	if l.pi, err = stationary(ctx, l.graph, l.period, l.cyc); err != nil {
+		return nil, err
+	}
+	l.head = make([]int32, m.states+1)
+	l.p, l.mass = make([]float64, len(m.edges)), make([]float64, len(m.edges))
+	for i := range m.edges {
+		e := &m.edges[i]
+		l.head[e.from+1]++
+		l.p[i], l.mass[i] = e.p, l.pi[e.from]*e.p
+	}
+	for s := range m.states {
+		l.head[s+1] += l.head[s]
+	}
+	return l, nil
 }
 
 // A process is a real vector that each edge of a machine emits at each of its positions, less its mean there: the mean
@@ -21,44 +52,32 @@ type chainLaw struct {
 // what repeats.
 type process struct {
 	*chainLaw
-	width int       // components of the vector
-	out   []float64 // out[(e*length + k)*width + j]: component j at position k of edge e
-	mean  []float64 // mean[(c*length + k)*width + j]
-}
-
-func newLaw(ctx context.Context, m *machine, length int) (*chainLaw, error) {
-	l := &chainLaw{machine: m, length: length, graph: m.graph()}
-	l.period, l.cyc = l.graph.Period()
-	var err error
-	l.pi, err = stationary(ctx, l.graph, l.period, l.cyc)
-	return l, err
+	width int         // components of the vector
+	out   [][]float64 // out[k*width+j][e]: component j at position k of edge e
+	mean  [][]float64 // mean[k*width+j][c] in cyclic class c
 }
 
 // process takes the mean of each cyclic class off out, in place.
-func (l *chainLaw) process(width int, out []float64) *process {
-	p := &process{chainLaw: l, width: width, out: out}
-	row := l.length * width
-	p.mean = make([]float64, l.period*row)
-	weight := make([]float64, l.period)
-	for i, e := range l.machine.edges {
-		w := l.pi[e.from] * e.p
-		c := l.cyc[e.from]
-		weight[c] += w
-		mean := p.mean[c*row : (c+1)*row]
-		for n, v := range out[i*row : (i+1)*row] {
-			mean[n] += w * v
+func (l *chainLaw) process(width int, out [][]float64) *process {
+	p := &process{chainLaw: l, width: width, out: out, mean: vectors(len(out), l.period)}
+	for n, v := range out {
+		mean := p.mean[n]
+		if l.period == 1 {
+			mean[0] = floats.Dot(l.mass, v)
+			floats.AddConst(-mean[0], v)
+			continue
 		}
-	}
-	for c, w := range weight {
-		for n := c * row; n < (c+1)*row; n++ {
-			p.mean[n] /= w
+		for s, c := range l.cyc {
+			lo, hi := l.head[s], l.head[s+1]
+			mean[c] += floats.Dot(l.mass[lo:hi], v[lo:hi])
 		}
-	}
-	for i, e := range l.machine.edges {
-		c := l.cyc[e.from]
-		mean := p.mean[c*row : (c+1)*row]
-		for n := range mean {
-			out[i*row+n] -= mean[n]
+		for c := range mean {
+			mean[c] *= float64(l.period) // each cyclic class has the probability 1/period
+		}
+		for s, c := range l.cyc {
+			for i := l.head[s]; i < l.head[s+1]; i++ {
+				v[i] -= mean[c]
+			}
 		}
 	}
 	return p
@@ -67,29 +86,45 @@ func (l *chainLaw) process(width int, out []float64) *process {
 // symbols is the process of the basis coefficients of the symbols' waveforms: coef[w] are those of waveform w.
 func (l *chainLaw) symbols(width int, coef [][]float64) *process {
 	edges := l.machine.edges
-	out := make([]float64, len(edges)*l.length*width)
-	n := 0
-	for i := range edges {
-		for _, w := range edges[i].word {
-			n += copy(out[n:n+width], coef[w])
+	out := vectors(l.length*width, len(edges))
+	for j := range width {
+		of := make([]float64, len(coef)) // of each waveform
+		for w := range coef {
+			of[w] = coef[w][j]
+		}
+		for i := range edges {
+			for k, w := range edges[i].word {
+				out[k*width+j][i] = of[w]
+			}
 		}
 	}
 	return l.process(width, out)
 }
 
+// product is the mean of the product of two rows.
+func (l *chainLaw) product(a, b, work []float64) float64 {
+	return floats.Dot(floats.MulTo(work, l.mass, a), b)
+}
+
 // variance is the sum over the components of the mean square, a symbol.
 func (p *process) variance() float64 {
-	row := p.length * p.width
+	work := make([]float64, len(p.mass))
 	sum := 0.0
-	for i, e := range p.machine.edges {
-		square := 0.0
-		for _, v := range p.out[i*row : (i+1)*row] {
-			square += v * v
-		}
-		sum += p.pi[e.from] * e.p * square
+	for _, v := range p.out {
+		sum += p.product(v, v, work)
 	}
 	return sum / float64(p.length)
 }
 
 // zero tells whether the process is its mean and rounding: scale is the mean square that rounding is measured by.
 func (p *process) zero(scale float64) bool { return p.variance() <= 1e-26*scale }
+
+// vectors makes n vectors of one size in one piece of memory.
+func vectors(n, size int) [][]float64 {
+	all := make([]float64, n*size)
+	v := make([][]float64, n)
+	for i := range v {
+		v[i] = all[i*size : (i+1)*size : (i+1)*size]
+	}
+	return v
+}

@@ -157,10 +157,7 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 		scale += out.tones.power[(j*width+j)*lags]
 	}
 	if !symbols.zero(scale) {
-		if out.form, err = symbols.spectral(ctx, lags); err != nil {
-			return nil, err
-		}
-		if out.near, err = nearNull(ctx, symbols, p.basis, scale); err != nil {
+		if out.form, out.near, err = symbols.densities(ctx, p.basis, scale, lags); err != nil {
 			return nil, err
 		}
 	}

@@ -12,18 +12,14 @@ type coder struct{ *linecode.Chain }
 func (c coder) Name() string { return c.Chain.Name }
 
 func (c coder) Levels() []float64 {
-	seen := map[float64]bool{}
+	var x lexicon
 	for i := range c.Edges {
 		for _, a := range c.Edges[i].Levels {
-			seen[a] = true
+			x.level(a)
 		}
 	}
-	levels := make([]float64, 0, len(seen))
-	for a := range seen {
-		levels = append(levels, a)
-	}
-	slices.Sort(levels)
-	return levels
+	slices.Sort(x.levels)
+	return x.levels
 }
 
 // FixedRate compares the cycles of the chain. Counted along a tree of paths, bits and symbols give each state a place;
@@ -36,8 +32,15 @@ func (c coder) FixedRate() (bits, symbols int, fixed bool) {
 			m.edges = append(m.edges, edge{from: int32(e.From), to: int32(e.To), p: e.P, word: []int32{int32(e.Bits), int32(len(e.Levels))}})
 		}
 	}
+	slices.SortStableFunc(m.edges, func(a, b edge) int { return int(a.from - b.from) })
+	head := make([]int, m.states+1)
+	for _, e := range m.edges {
+		head[e.from+1]++
+	}
+	for s := range m.states {
+		head[s+1] += head[s]
+	}
 	component, _ := m.graph().Components()
-	head, order := (&chainLaw{machine: m}).outgoing()
 	type place struct{ bits, symbols int }
 	at := make([]place, m.states)
 	known := make([]bool, m.states)
@@ -48,8 +51,7 @@ func (c coder) FixedRate() (bits, symbols int, fixed bool) {
 		known[root] = true
 		for queue := []int32{int32(root)}; len(queue) > 0; queue = queue[1:] {
 			s := queue[0]
-			for _, i := range order[head[s]:head[s+1]] {
-				e := &m.edges[i]
+			for _, e := range m.edges[head[s]:head[s+1]] {
 				if component[e.to] != component[s] {
 					continue
 				}

@@ -3,6 +3,8 @@ package spectrum
 import (
 	"context"
 	"math"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // A resolvent is what a process adds to its form beyond the first lags:
@@ -51,30 +53,26 @@ func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, er
 func (a *autocorr) arnoldi(ctx context.Context, rank int) (basis, h [][]float64, err error) {
 	scale := 0.0
 	for _, f := range a.f {
-		scale = max(scale, norm(f))
+		scale = max(scale, floats.Norm(f, 2))
 	}
 	var weight []float64
 	// orthogonalise takes from v its parts along the basis, twice for full precision, and makes the rest a new
 	// direction if it is one. It returns the coordinates of v.
 	orthogonalise := func(v []float64, reach float64) []float64 {
-		size := norm(v)
+		size := floats.Norm(v, 2)
 		c := make([]float64, len(basis), len(basis)+1)
 		for range 2 {
 			for i, e := range basis {
-				d := dot(e, v)
+				d := floats.Dot(e, v)
 				c[i] += d
-				for s := range v {
-					v[s] -= d * e[s]
-				}
+				floats.AddScaled(v, -d, e)
 			}
 		}
-		left := norm(v)
+		left := floats.Norm(v, 2)
 		if left <= 1e-14*size || reach*left <= 1e-19*scale {
 			return c
 		}
-		for s := range v {
-			v[s] /= left
-		}
+		floats.Scale(1/left, v)
 		basis = append(basis, v)
 		weight = append(weight, reach*left)
 		return append(c, left)
@@ -93,7 +91,7 @@ func (a *autocorr) arnoldi(ctx context.Context, rank int) (basis, h [][]float64,
 			return nil, nil, context.Cause(ctx)
 		}
 		v := make([]float64, len(a.next))
-		a.step1.apply(v, basis[n])
+		a.step1.apply(v, basis[n], true)
 		columns = append(columns, orthogonalise(v, weight[n]))
 		a.work += float64(4 * len(basis) * len(v))
 	}
@@ -113,21 +111,11 @@ func coordinates(basis, of [][]float64) [][]float64 {
 			continue
 		}
 		for n, e := range basis {
-			c[i][n] = dot(e, v)
+			c[i][n] = floats.Dot(e, v)
 		}
 	}
 	return c
 }
-
-func dot(a, b []float64) float64 {
-	sum := 0.0
-	for i, x := range a {
-		sum += x * b[i]
-	}
-	return sum
-}
-
-func norm(v []float64) float64 { return math.Sqrt(dot(v, v)) }
 
 // hessenberg makes h upper Hessenberg by reflections (A. S. Householder 1958; G. H. Golub and C. F. Van Loan, Matrix
 // Computations, algorithm 7.4.2) and turns the vectors along. A subspace that grew from one function is so already.
@@ -149,13 +137,10 @@ func hessenberg(ctx context.Context, h [][]float64, vectors ...[][]float64) erro
 		for r := range v {
 			v[r] = h[c+1+r][c]
 		}
-		v[0] += math.Copysign(norm(v), v[0])
-		size := norm(v)
-		for r := range v {
-			v[r] /= size
-		}
+		v[0] += math.Copysign(floats.Norm(v, 2), v[0])
+		floats.Scale(1/floats.Norm(v, 2), v)
 		reflect := func(row []float64) { // row of n numbers, from the right
-			d := 2 * dot(v, row[c+1:])
+			d := 2 * floats.Dot(v, row[c+1:])
 			for r, y := range v {
 				row[c+1+r] -= d * y
 			}
@@ -184,9 +169,12 @@ func hessenberg(ctx context.Context, h [][]float64, vectors ...[][]float64) erro
 	return nil
 }
 
-func (r *resolvent) cost() float64 {
-	n := float64(len(r.columns))
-	return 20*n + rankCost*n*n + 4*n*float64(len(r.b))
+func (r *resolvent) cost() float64 { return resolventCost(len(r.columns), len(r.b)) }
+
+// resolventCost estimates the nanoseconds of one value at a rank, with so many left and right vectors.
+func resolventCost(rank, vectors int) float64 {
+	n := float64(rank)
+	return startCost + n*(30+rankCost*n+8*float64(vectors))
 }
 
 // at is the resolvent's part of the form for the transforms h.
@@ -198,7 +186,7 @@ func (r *resolvent) at(t angle, h []complex128) float64 {
 	return 2 * real(r.value(t, left, h))
 }
 
-// matrix adds prob times the resolvent's part of the spectral matrix to column k of dst, as PSD.matrix has it.
+// matrix adds prob times the resolvent's part of the spectral matrix to column k of dst, as form.matrix has it.
 func (r *resolvent) matrix(t angle, dst [][]float64, k int, prob float64) {
 	w := r.width
 	x := make([]complex128, w*w)

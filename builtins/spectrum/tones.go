@@ -62,11 +62,10 @@ func newComb(ctx context.Context, sequences [][]float64, lags int) (*comb, error
 
 // means is the comb of the process's mean.
 func (p *process) means(ctx context.Context, lags int) (*comb, error) {
-	n := p.period * p.length
-	sequences := vectors(p.width, n)
-	for i := range n {
-		for j := range sequences {
-			sequences[j][i] = p.mean[i*p.width+j]
+	sequences := vectors(p.width, p.period*p.length)
+	for n, mean := range p.mean {
+		for c, v := range mean {
+			sequences[n%p.width][c*p.length+n/p.width] = v
 		}
 	}
 	return newComb(ctx, sequences, lags)

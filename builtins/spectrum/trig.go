@@ -21,12 +21,13 @@ type angle struct {
 	nu       float64
 	cos, sin float64
 	half     float64 // sin(t/2)
+	other    float64 // cos(t/2)
 }
 
 func newAngle(nu float64) angle {
 	r := nu - math.Round(nu)
-	sin, cos := math.Sincos(2 * math.Pi * r)
-	return angle{r, cos, sin, math.Sin(math.Pi * r)}
+	sin, cos := math.Sincos(math.Pi * r)
+	return angle{nu: r, cos: 1 - 2*sin*sin, sin: 2 * sin * cos, half: sin, other: cos}
 }
 
 // even is the sum of a[k] cos kt, odd that of a[k] sin kt.
@@ -54,8 +55,7 @@ func (s series) reinsch(t angle) (d, b, factor float64) {
 	a := s.a
 	if t.cos < 0 {
 		a = s.flip
-		cos := math.Cos(math.Pi * t.nu)
-		factor = -4 * cos * cos
+		factor = -4 * t.other * t.other
 	} else {
 		factor = -4 * t.half * t.half
 	}
