@@ -29,7 +29,8 @@ type Bundle struct {
 
 // Render gives the forms of a value that is a cell's last expression, or is shown:
 //
-//   - a figure, a *plot.Plot of gonum, and a density (as its [Spectrum]): image/svg+xml, image/png and text/plain;
+//   - a figure, a *plot.Plot of gonum, a density and a list of classes (as their [Spectrum]): image/svg+xml, image/png
+//     and text/plain;
 //   - a code: a card of its figures, text/html and text/plain;
 //   - tones, slices of numbers, matrices: text/plain as fmt.Print gives it, and a bounded table (see [Table]);
 //   - an image.Image: image/png and text/plain with its size;
@@ -58,6 +59,10 @@ func Render(v any) (b Bundle, err error) {
 		return Of(v).bundle()
 	case *spectrum.PSD:
 		return Spectrum(v).bundle()
+	case []spectrum.Class:
+		if len(v) > 0 {
+			return classes(v).bundle()
+		}
 	case *linecode.Code:
 		return card(v), nil
 	case image.Image:

@@ -11,6 +11,7 @@ import (
 	"slices"
 	"strings"
 	"testing"
+	"unicode/utf8"
 
 	"github.com/google/go-cmp/cmp"
 	"gonum.org/v1/gonum/mat"
@@ -18,6 +19,7 @@ import (
 	"gonum.org/v1/plot/plotter"
 
 	"linewright/builtins/linecode"
+	"linewright/builtins/pulse"
 	"linewright/builtins/spectrum"
 )
 
@@ -106,6 +108,98 @@ func TestRenderInterrupt(t *testing.T) {
 	p.Add(plotter.NewFunction(func(float64) float64 { panic(stop) }))
 	if _, err := Render(p); !errors.Is(err, stop) {
 		t.Errorf("error %v, want one that wraps %v", err, stop)
+	}
+}
+
+// TestRenderClasses: an encoder whose first bit decides for ever between sending bits and sending zeros ends in one of
+// two classes. The figure of the average says so, and each class has a curve of its own under its probability.
+func TestRenderClasses(t *testing.T) {
+	code, err := linecode.New(linecode.Spec{Name: "fork", Bits: 1, Start: 0, Step: func(s any, word uint) (any, []float64) {
+		switch s.(int) {
+		case 0:
+			return int(word) + 1, []float64{0}
+		case 1:
+			return 1, []float64{float64(word)}
+		}
+		return 2, []float64{2 * float64(word)}
+	}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	p, err := spectrum.Exact(code, pulse.Train{SymbolRate: 1e6})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, tt := range []struct {
+		v    any
+		want []string
+	}{
+		{p, []string{"fork, average of 2 classes"}},
+		{p.Classes(), []string{"class 1, probability 0.5", "class 2, probability 0.5"}},
+	} {
+		b, err := Render(tt.v)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, name := range tt.want {
+			if !strings.Contains(b.Data[mimeSVG].(string), ">"+name+"</text>") {
+				t.Errorf("the figure of %T does not name %q", tt.v, name)
+			}
+		}
+	}
+}
+
+// TestRenderCard: a code's card says of it what the code does.
+func TestRenderCard(t *testing.T) {
+	code, err := linecode.New(linecode.Spec{Name: `<i>own</i>`, Bits: 2, Start: 0, Step: func(_ any, word uint) (any, []float64) {
+		if word == 3 {
+			return 0, []float64{1.5, -1.5}
+		}
+		return 0, []float64{float64(word)}
+	}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	b, err := Render(code)
+	if err != nil {
+		t.Fatal(err)
+	}
+	// Four equally likely words of two bits take 1, 1, 1 and 2 symbols: 8 bits in 5 symbols.
+	want := "<i>own</i>\n" +
+		"  defined by            a script\n" +
+		"  source bits per step  2\n" +
+		"  rate                  1.6 bits per symbol in the mean; data change it\n" +
+		"  levels                −1.5, 0, 1, 1.5, 2\n" +
+		"  states                1, of which 1 recurrent and distinct\n" +
+		"  delay                 none\n" +
+		"  data                  P(1) = 0.5\n" +
+		"  decoding              decodable; data that differ agree in 0 symbols at most"
+	if diff := cmp.Diff(want, b.Data[mimeText]); diff != "" {
+		t.Errorf("text/plain (-want +got):\n%s", diff)
+	}
+	caption, rows := parse(t, b.Data[mimeHTML].(string))
+	if strings.Contains(b.Data[mimeHTML].(string), "<i>") || len(rows) != len(facts(code)) || caption != "" {
+		t.Errorf("text/html: %s", b.Data[mimeHTML])
+	}
+	for i, f := range facts(code) {
+		if diff := cmp.Diff([]string{f.what, f.value}, rows[i]); diff != "" {
+			t.Errorf("row %d (-want +got):\n%s", i, diff)
+		}
+	}
+	for _, name := range linecode.Names() {
+		c, err := linecode.ByName(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		b, err := Render(c)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for _, row := range strings.Split(b.Data[mimeText].(string), "\n") {
+			if n := utf8.RuneCountInString(row); n > 76 || strings.Contains(row, "not worked out") {
+				t.Errorf("%s: a row of %d characters: %q", name, n, row)
+			}
+		}
 	}
 }
 

@@ -8,6 +8,7 @@ import (
 	"unicode/utf8"
 
 	"linewright/builtins/linecode"
+	"linewright/builtins/page"
 )
 
 // A fact is one row of a card.
@@ -28,12 +29,15 @@ func facts(c *linecode.Code) []fact {
 		list[0] = fact{"defined by", "a script"}
 	}
 	list = append(list,
-		fact{"source bits a step", strconv.Itoa(c.Bits())},
+		fact{"source bits per step", strconv.Itoa(c.Bits())},
 		fact{"rate", tryFact(func() string { return rateFact(c) })},
 		fact{"levels", strings.Join(levels, ", ")},
-		fact{"states", strconv.Itoa(c.States())},
+		fact{"states", tryFact(func() string {
+			return fmt.Sprintf("%d, of which %d recurrent and distinct", c.States(), c.Minimal())
+		})},
 		fact{"delay", delayFact(c.Delay())},
 		fact{"data", c.Source().String()},
+		fact{"decoding", tryFact(func() string { return decodingFact(c) })},
 	)
 	return list
 }
@@ -42,11 +46,20 @@ func facts(c *linecode.Code) []fact {
 func rateFact(c *linecode.Code) string {
 	if bits, symbols, fixed := c.FixedRate(); fixed {
 		if symbols == 1 {
-			return plural(bits, "bit") + " a symbol"
+			return plural(bits, "bit") + " per symbol"
 		}
-		return fmt.Sprintf("%d/%d bit a symbol", bits, symbols)
+		return fmt.Sprintf("%d/%d bits per symbol", bits, symbols)
 	}
-	return fmt.Sprintf("%.6g bit a symbol in the mean; data change it", c.Rate())
+	return fmt.Sprintf("%.6g bits per symbol in the mean; data change it", c.Rate())
+}
+
+// decodingFact says whether the symbols determine the data.
+func decodingFact(c *linecode.Code) string {
+	v := c.Decodable()
+	if v.Decodable {
+		return "decodable; data that differ agree in " + plural(v.Delay, "symbol") + " at most"
+	}
+	return v.String()
 }
 
 func delayFact(symbols int) string {
@@ -64,10 +77,13 @@ func plural(n int, what string) string {
 }
 
 // tryFact returns a fact that may be beyond reach, such as the mean rate of a code whose chain is too large: then the
-// reason stands in its place.
+// reason stands in its place. An interrupt goes on.
 func tryFact(f func() string) (s string) {
 	defer func() {
 		if r := recover(); r != nil {
+			if page.Context().Err() != nil {
+				panic(r)
+			}
 			s = fmt.Sprint("not worked out: ", r)
 		}
 	}()
@@ -107,7 +123,7 @@ func card(c *linecode.Code) Bundle {
 	fmt.Fprintf(&table, `<table class="linewright"><caption style="text-align:left"><b>%s</b></caption>`, html.EscapeString(c.Name()))
 	for _, f := range list {
 		fmt.Fprintf(&text, "\n  %-*s  %s", width, f.what, wrap(f.value, 76-width-4, width+4))
-		fmt.Fprintf(&table, "\n"+`<tr><th style="text-align:left">%s</th><td style="text-align:left">%s</td></tr>`, html.EscapeString(f.what), html.EscapeString(f.value))
+		fmt.Fprintf(&table, "\n"+`<tr><th style="text-align:left;vertical-align:top;white-space:nowrap">%s</th><td style="text-align:left">%s</td></tr>`, html.EscapeString(f.what), html.EscapeString(f.value))
 	}
 	table.WriteString("</table>")
 	b := textBundle(text.String())

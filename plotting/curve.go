@@ -24,8 +24,7 @@ func (v *curve) Plot(c draw.Canvas, p *plot.Plot) {
 	c.StrokeLines(v.style, c.ClipLinesXY(v.lines(c, p)...)...)
 }
 
-// lines returns the curve on the canvas, parted at its gaps. Where there is more than one point to a pixel column, it
-// has each column's first, lowest, highest and last point, which draws the same pixels.
+// lines returns the curve on the canvas, parted at its gaps.
 func (v *curve) lines(c draw.Canvas, p *plot.Plot) [][]vg.Point {
 	x, y := p.Transforms(&c)
 	below, above := y(p.Y.Min)-c.Size().Y, y(p.Y.Max)+c.Size().Y
@@ -33,7 +32,7 @@ func (v *curve) lines(c draw.Canvas, p *plot.Plot) [][]vg.Point {
 	var line []vg.Point
 	for i := range v.xs {
 		if math.IsNaN(v.ys[i]) {
-			lines, line = append(lines, thin(line)), nil
+			lines, line = append(lines, line), nil
 			continue
 		}
 		// Far outside, the height does not matter, and infinite coordinates cannot be cut.
@@ -43,10 +42,31 @@ func (v *curve) lines(c draw.Canvas, p *plot.Plot) [][]vg.Point {
 		}
 		line = append(line, at)
 	}
-	return append(lines, thin(line))
+	return append(lines, line)
 }
 
-// thin reduces a dense line to at most four points a pixel column.
+// thinPath returns a path that is one dense line of rising x with fewer points, every other path as it is. The canvases
+// draw through it, so that figures of ten thousands of points stay small, whoever drew them.
+func thinPath(p vg.Path) vg.Path {
+	line := make([]vg.Point, len(p))
+	for i, e := range p {
+		if i == 0 && e.Type != vg.MoveComp || i > 0 && (e.Type != vg.LineComp || e.Pos.X < line[i-1].X) {
+			return p
+		}
+		line[i] = e.Pos
+	}
+	var out vg.Path
+	for i, at := range thin(line) {
+		if i == 0 {
+			out.Move(at)
+		} else {
+			out.Line(at)
+		}
+	}
+	return out
+}
+
+// thin reduces a dense line to each pixel column's first, lowest, highest and last point, which draw the same pixels.
 func thin(line []vg.Point) []vg.Point {
 	if n := len(line); n < 3 || vg.Length(n) <= 2*(line[n-1].X-line[0].X)/pixel {
 		return line

@@ -107,22 +107,38 @@ func ExampleText() {
 
 type mirror struct{ A, B float64 }
 
+// A code shows as a card.
 func ExampleRender() {
-	b, err := plotting.Render(linecode.HDB3())
+	code, err := linecode.New(linecode.Spec{
+		Name:  "balanced marks",
+		Bits:  1,
+		Start: 0,
+		Step: func(s any, word uint) (any, []float64) {
+			switch sum := s.(int); {
+			case word == 0:
+				return sum, []float64{0, 0}
+			case sum > 0:
+				return 0, []float64{-1, 0}
+			}
+			return 1, []float64{1, 0}
+		},
+	})
+	if err != nil {
+		log.Fatal(err)
+	}
+	b, err := plotting.Render(code)
 	if err != nil {
 		log.Fatal(err)
 	}
 	fmt.Println(b.Data["text/plain"])
 	// Output:
-	// HDB3
-	//   defined by          ITU-T G.703 Annex A (from memory): AMI with four 0s as
-	//                       000V or B00V, so that the violations V alternate; the
-	//                       first mark is +1, and no mark before the first
-	//                       violation counts as an even number, B00V
-	//   source bits a step  1
-	//   rate                1 bit a symbol
-	//   levels              −1, 0, 1
-	//   states              35
-	//   delay               3 symbols
-	//   data                P(1) = 0.5
+	// balanced marks
+	//   defined by            a script
+	//   source bits per step  1
+	//   rate                  1/2 bits per symbol
+	//   levels                −1, 0, 1
+	//   states                2, of which 2 recurrent and distinct
+	//   delay                 none
+	//   data                  P(1) = 0.5
+	//   decoding              decodable; data that differ agree in 0 symbols at most
 }

@@ -33,7 +33,7 @@ func (c *pngCanvas) SetLineDash(ds []vg.Length, offset vg.Length) {
 }
 
 func (c *pngCanvas) Stroke(p vg.Path) {
-	if len(p) <= pieceLength {
+	if p = thinPath(p); len(p) <= pieceLength {
 		c.Canvas.Stroke(p)
 		return
 	}

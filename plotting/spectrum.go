@@ -162,6 +162,23 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	return s
 }
 
+// classes draws the spectra of the classes that data can end in.
+func classes(cs []spectrum.Class) *SpectrumFigure {
+	of := make([]density, len(cs))
+	for i, c := range cs {
+		of[i] = class{c.Spectrum, fmt.Sprintf("class %d, probability %.4g", i+1, c.Probability)}
+	}
+	return newSpectrum(of, false, spectrumRange(of))
+}
+
+// class is the density of a class under the class's name.
+type class struct {
+	density
+	name string
+}
+
+func (c class) Name() string { return c.name }
+
 // distinct returns the names of the spectra, equal ones numbered. An average over the classes in which the data can end
 // says so: no single waveform has it.
 func distinct(of []density) []string {

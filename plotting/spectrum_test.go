@@ -140,7 +140,7 @@ func TestSpectrumRange(t *testing.T) {
 	}{{[]float64{10e6}, 3e6}, {[]float64{0.1e6}, 1e6}, {[]float64{1e6}, 1.5e6}, {[]float64{1e6, 0.1e6, 1.2e6}, 1.8e6}} {
 		var of []density
 		for _, w := range tt.within {
-			of = append(of, narrow{flat("a", 0).(fake), w})
+			of = append(of, narrowBand{flat("a", 0).(fake), w})
 		}
 		if got := spectrumRange(of); math.Abs(got-tt.want) > 1e-6 {
 			t.Errorf("99 %% within %v Hz: range %g, want %g", tt.within, got, tt.want)
@@ -148,12 +148,12 @@ func TestSpectrumRange(t *testing.T) {
 	}
 }
 
-type narrow struct {
+type narrowBand struct {
 	fake
 	within float64
 }
 
-func (d narrow) Within(float64) float64 { return d.within }
+func (d narrowBand) Within(float64) float64 { return d.within }
 
 func TestSpectrumPanics(t *testing.T) {
 	s := newSpectrum(fakes(0), false, 6e6)

@@ -26,7 +26,7 @@ import (
 //
 // gonum's own SVG canvas embeds whole fonts, 400 kB each as text of the notebook; this one embeds the glyphs in use,
 // some kilobytes, so that a figure looks the same wherever it is opened and its text can still be searched and copied.
-// It also applies all transforms itself, names the figure for screen readers, and joins strokes of one style to one
+// It also applies all transforms itself, thins dense lines, names the figure for screen readers, and joins strokes of one style to one
 // path.
 type svgCanvas struct {
 	width, height vg.Length
@@ -56,7 +56,6 @@ type svgElement struct {
 // An svgFont is one font with the characters that the figure writes in it.
 type svgFont struct {
 	font       *sfnt.Font
-	weight     string
 	characters []rune
 }
 
@@ -102,7 +101,7 @@ func (c *svgCanvas) Stroke(p vg.Path) {
 			a.WriteString(` stroke-dashoffset="` + decimal(s.offset.Points()*scale) + `"`)
 		}
 	}
-	c.addPath(a.String(), p)
+	c.addPath(a.String(), thinPath(p))
 }
 
 func (c *svgCanvas) Fill(p vg.Path) {

@@ -17,6 +17,8 @@ import (
 const (
 	headRows, tailRows       = 12, 4
 	headColumns, tailColumns = 8, 2
+	wideColumns              = 5 // in place of headColumns where a number has more than shortNumber characters
+	shortNumber              = 6
 )
 
 // Table returns an HTML table of numbers: slices and arrays of integers, floating-point or complex numbers, such
@@ -55,9 +57,9 @@ func Table(v any) (string, bool) {
 	if columns == 0 {
 		return "", false
 	}
-	size := fmt.Sprintf("%d × %d of %s", rv.Len(), columns, elem.Elem())
+	size := fmt.Sprintf("%d × %d numbers, %s", rv.Len(), columns, elem.Elem())
 	if ragged {
-		size = fmt.Sprintf("%d rows of up to %d %s", rv.Len(), columns, elem.Elem())
+		size = fmt.Sprintf("%d rows of up to %d numbers, %s", rv.Len(), columns, elem.Elem())
 	}
 	return grid(rv.Len(), columns, size, func(i, j int) string {
 		if row := rv.Index(i); j < row.Len() {
@@ -92,16 +94,12 @@ func listTable(v reflect.Value) string {
 	n := v.Len()
 	perRow := 10
 	for _, i := range shown(n, 100, 10) {
-		if i >= 0 && len(digits(v.Index(i))) > 7 {
+		if i >= 0 && len(digits(v.Index(i))) > shortNumber {
 			perRow = 5 // wide numbers: ten in a row would need a scroll bar
 		}
 	}
-	count := fmt.Sprintf("%d of %s", n, v.Type().Elem())
-	if n == 1 {
-		count = "1 " + v.Type().Elem().String()
-	}
 	var t tableWriter
-	t.start(count)
+	t.start(plural(n, "number") + ", " + v.Type().Elem().String())
 	t.head("")
 	for j := range min(perRow, n) {
 		t.head("+" + strconv.Itoa(j))
@@ -122,14 +120,21 @@ func listTable(v reflect.Value) string {
 
 // grid writes rows by columns under a caption.
 func grid(rows, columns int, caption string, at func(i, j int) string) string {
-	js := shown(columns, headColumns, tailColumns)
+	is, js := shown(rows, headRows, tailRows), shown(columns, headColumns, tailColumns)
+	for _, i := range is {
+		for _, j := range js {
+			if i >= 0 && j >= 0 && len(at(i, j)) > shortNumber {
+				js = shown(columns, wideColumns, tailColumns) // no scroll bar
+			}
+		}
+	}
 	var t tableWriter
 	t.start(caption)
 	t.head("")
 	for _, j := range js {
 		t.head(index(j, "⋯"))
 	}
-	for _, i := range shown(rows, headRows, tailRows) {
+	for _, i := range is {
 		t.row()
 		t.head(index(i, "⋮"))
 		for _, j := range js {
@@ -148,12 +153,8 @@ func grid(rows, columns int, caption string, at func(i, j int) string) string {
 
 // toneTable writes tones with their units.
 func toneTable(lines []spectrum.Line) string {
-	count := fmt.Sprintf("%d tones", len(lines))
-	if len(lines) == 1 {
-		count = "1 tone"
-	}
 	var t tableWriter
-	t.start(count)
+	t.start(plural(len(lines), "tone"))
 	t.head("")
 	t.head("frequency (Hz)")
 	t.head("power (V²)")

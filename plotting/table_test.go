@@ -56,20 +56,20 @@ func TestTable(t *testing.T) {
 		caption string
 		rows    [][]string
 	}{
-		{"bits", []byte{1, 0, 1, 1, 0, 0, 0, 0, 1, 1, 0, 1}, "12 of uint8", [][]string{
+		{"bits", []byte{1, 0, 1, 1, 0, 0, 0, 0, 1, 1, 0, 1}, "12 numbers, uint8", [][]string{
 			{"", "+0", "+1", "+2", "+3", "+4", "+5", "+6", "+7", "+8", "+9"},
 			{"0", "1", "0", "1", "1", "0", "0", "0", "0", "1", "1"},
 			{"10", "0", "1"}}},
-		{"one", []int{7}, "1 int", [][]string{{"", "+0"}, {"0", "7"}}},
-		{"floats", []float64{1.0 / 3, math.Inf(-1), math.NaN(), -2e-12, 5, 6}, "6 of float64", [][]string{
+		{"one", []int{7}, "1 number, int", [][]string{{"", "+0"}, {"0", "7"}}},
+		{"floats", []float64{1.0 / 3, math.Inf(-1), math.NaN(), -2e-12, 5, 6}, "6 numbers, float64", [][]string{
 			{"", "+0", "+1", "+2", "+3", "+4"},
 			{"0", "0.333333", "-Inf", "NaN", "-2e-12", "5"},
 			{"5", "6"}}},
-		{"complex", []complex128{1 - 2i}, "1 complex128", [][]string{{"", "+0"}, {"0", "1-2i"}}},
-		{"durations keep their units", [2]time.Duration{time.Second, time.Millisecond}, "2 of time.Duration", [][]string{
+		{"complex", []complex128{1 - 2i}, "1 number, complex128", [][]string{{"", "+0"}, {"0", "1-2i"}}},
+		{"durations keep their units", [2]time.Duration{time.Second, time.Millisecond}, "2 numbers, time.Duration", [][]string{
 			{"", "+0", "+1"}, {"0", "1s", "1ms"}}},
-		{"rows", [][]float64{{1, 2}, {3, 4}}, "2 × 2 of float64", [][]string{{"", "0", "1"}, {"0", "1", "2"}, {"1", "3", "4"}}},
-		{"ragged rows", [][]int{{1}, {2, 3}}, "2 rows of up to 2 int", [][]string{{"", "0", "1"}, {"0", "1", ""}, {"1", "2", "3"}}},
+		{"rows", [][]float64{{1, 2}, {3, 4}}, "2 × 2 numbers, float64", [][]string{{"", "0", "1"}, {"0", "1", "2"}, {"1", "3", "4"}}},
+		{"ragged rows", [][]int{{1}, {2, 3}}, "2 rows of up to 2 numbers, int", [][]string{{"", "0", "1"}, {"0", "1", ""}, {"1", "2", "3"}}},
 		{"matrix", mat.NewDense(2, 2, []float64{1, 2, 3, 4}), "2 × 2 matrix", [][]string{{"", "0", "1"}, {"0", "1", "2"}, {"1", "3", "4"}}},
 		{"transposed", mat.NewDense(2, 2, []float64{1, 2, 3, 4}).T(), "2 × 2 matrix", [][]string{{"", "0", "1"}, {"0", "1", "3"}, {"1", "2", "4"}}},
 		{"tones", []spectrum.Line{{Freq: 0, Power: 0.25}, {Freq: 2048000.5, Power: 1.0 / 3}}, "2 tones", [][]string{
