@@ -60,6 +60,7 @@ type Interpreter struct {
 	phantoms  map[*types.Func]bool    // methods of cells that then did not compile
 	methods   map[types.Object]string // method -> the interpreter's variable that holds its function
 	gens      generations
+	runs      int               // serial number of the last cell
 	aliases   map[string]string // package path -> name under which the interpreter imports it
 	aliasPath map[string]string // the reverse
 	imported  map[string]bool   // aliases that the interpreter has imported
@@ -71,6 +72,9 @@ type Interpreter struct {
 	tracks     tracks
 	traces     traces
 	goroutines goroutines
+	watching   atomic.Bool
+	serial     *int     // the interpreter's variable with the serial number of the running cell
+	notes      []string // what the next cell says on its stderr; owned by the holder of running once settled
 	page       pageState
 }
 
@@ -101,7 +105,7 @@ func New(opt Options) (*Interpreter, error) {
 	for name, path := range lib.own {
 		in.preloaded[name] = path
 	}
-	in.vm, err = newMachine(stream{in, "stdout"}, traceWriter{in}, in.hooks())
+	in.vm, err = newMachine(stream{in, "stdout"}, traceWriter{in}, in.hooks(), in.replacements())
 	if err != nil {
 		return nil, err
 	}
@@ -109,19 +113,27 @@ func New(opt Options) (*Interpreter, error) {
 	if _, err := in.vm.yaegi.Eval(`import ` + kernel + ` "linewright/cell"`); err != nil {
 		return nil, err
 	}
+	if _, err := in.vm.yaegi.Eval("var " + kernel + "run int"); err != nil {
+		return nil, err
+	}
+	v, err := in.vm.yaegi.Eval("&" + kernel + "run")
+	if err != nil {
+		return nil, err
+	}
+	in.serial = v.Interface().(*int)
 	in.settled = make(chan struct{})
 	close(in.settled)
 	return in, nil
 }
 
-// hooks are the functions of this package that lowered cells call, and those that replace functions of the standard
-// library.
+// hooks are the functions of this package that lowered cells call.
 func (in *Interpreter) hooks() interp.Exports {
 	return interp.Exports{
 		"linewright/cell/cell": {
 			"Show":    reflect.ValueOf(in.show),
 			"Recover": reflect.ValueOf(in.recovered),
 			"Go":      reflect.ValueOf(in.start),
+			"Leave":   reflect.ValueOf(in.leave),
 		},
 	}
 }

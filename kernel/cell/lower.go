@@ -5,6 +5,7 @@ import (
 	"go/ast"
 	"go/token"
 	"go/types"
+	"strconv"
 	"strings"
 
 	"golang.org/x/tools/go/ast/astutil"
@@ -14,6 +15,7 @@ import (
 type program struct {
 	imports, types, vars, funcs []ast.Decl
 	entry                       string // the function of the statements; empty if there are none
+	serial                      int    // of the run; see stillMine
 	setup                       string // a function to call before it, or empty
 	uses                        map[*decl]map[string]types.Object
 	slots                       map[types.Object]string // the interpreter's names of the new objects
@@ -38,7 +40,8 @@ type lowering struct {
 
 // lower rewrites a checked cell into Go that the interpreter runs well.
 func (in *Interpreter) lower(u *unit) (*program, error) {
-	l := &lowering{in: in, u: u, p: &program{slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}}
+	in.runs++
+	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}}
 	pos := u.src.fn.Body.Lbrace
 	l.name(pos)
 	for _, d := range u.decls {
@@ -183,6 +186,7 @@ func (l *lowering) body(fn *ast.FuncDecl) {
 	from, to := fn.Body.Pos(), fn.Body.End()
 	l.rewrite(fn.Body)
 	l.mark("", kernel+"at", from, to, fn.Body)
+	l.guard(fn.Body)
 	l.p.entry = l.in.gens.fresh(kernel + "cell")
 	fn.Name.Name = l.p.entry
 	l.p.funcs = append(l.p.funcs, fn)
@@ -405,4 +409,56 @@ func typeName(t types.Type) types.Object {
 		return n.Obj()
 	}
 	return nil
+}
+
+// guard lets the cell's function end where it wakes up after an interrupt that could not reach it: before each of its
+// statements and in each turn of its loops it asks whether its run is still the current one.
+func (l *lowering) guard(body *ast.BlockStmt) {
+	var list []ast.Stmt
+	for i, s := range body.List {
+		if i > 0 {
+			list = append(list, l.stillMine(s.Pos()))
+		}
+		list = append(list, s)
+	}
+	body.List = list
+	ast.Inspect(body, func(n ast.Node) bool {
+		var loop *ast.BlockStmt
+		switch n := n.(type) {
+		case *ast.FuncLit:
+			return false
+		case *ast.ForStmt:
+			loop = n.Body
+		case *ast.RangeStmt:
+			loop = n.Body
+		default:
+			return true
+		}
+		if calls(loop) {
+			loop.List = append([]ast.Stmt{l.stillMine(loop.Lbrace)}, loop.List...)
+		}
+		return true
+	})
+}
+
+// calls reports whether a loop calls anything: one that does not cannot wait in compiled code.
+func calls(body *ast.BlockStmt) bool {
+	found := false
+	ast.Inspect(body, func(n ast.Node) bool {
+		_, call := n.(*ast.CallExpr)
+		found = found || call
+		return !found
+	})
+	return found
+}
+
+func (l *lowering) stillMine(pos token.Pos) ast.Stmt {
+	return &ast.IfStmt{
+		If: pos,
+		Cond: &ast.BinaryExpr{
+			X: &ast.Ident{Name: kernel + "run", NamePos: pos}, OpPos: pos, Op: token.NEQ,
+			Y: &ast.BasicLit{Kind: token.INT, ValuePos: pos, Value: strconv.Itoa(l.p.serial)},
+		},
+		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{&ast.ExprStmt{X: l.hook("Leave", pos)}}, Rbrace: pos},
+	}
 }

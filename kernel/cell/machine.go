@@ -29,9 +29,9 @@ type machine struct {
 	done  chan struct{}
 }
 
-func newMachine(stdout, stderr io.Writer, hooks interp.Exports) (*machine, error) {
+func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, error) {
 	y := interp.New(interp.Options{Stdin: strings.NewReader(""), Stdout: stdout, Stderr: stderr, Unrestricted: true})
-	for _, table := range []interp.Exports{stdlib.Symbols, symbols.Symbols, hooks} {
+	for _, table := range append([]interp.Exports{stdlib.Symbols, symbols.Symbols}, more...) {
 		if err := y.Use(table); err != nil {
 			return nil, fmt.Errorf("cell: loading symbols: %w", err)
 		}

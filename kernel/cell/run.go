@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"go/scanner"
+	"runtime"
 	"strings"
 	"sync"
 	"time"
@@ -41,6 +42,10 @@ func (in *Interpreter) begin(ctx context.Context, n int, code, cellID string, ou
 	r.ctx, r.cancel = context.WithCancelCause(context.WithoutCancel(ctx))
 	r.unlink = context.AfterFunc(ctx, func() { r.cancel(context.Cause(ctx)) })
 	in.current.Store(r)
+	for _, n := range in.notes {
+		out.Stream("stderr", []byte(n+"\n"))
+	}
+	in.notes = nil
 	page.Attach(host{in})
 	return r
 }
@@ -54,16 +59,22 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 	if p.entry == "" {
 		return nil, nil
 	}
+	*in.serial = p.serial
 	done := make(chan error, 1)
 	go func() {
+		var err error
+		defer func() { done <- err }() // also if the cell ends its goroutine
 		defer in.goroutines.enter(r)()
-		done <- r.call(p.entry)
+		err = r.call(p.entry)
 	}()
+	in.watch()
 	select {
 	case err := <-done:
 		switch {
 		case r.ctx.Err() != nil:
-			return nil, r.interrupted()
+			done <- nil
+			in.stop(r, done)
+			return nil, r.stopped()
 		case err != nil:
 			return nil, err
 		case r.failure != nil:
@@ -71,8 +82,8 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 		}
 		return r.bundle, nil
 	case <-r.ctx.Done():
-		in.stop(done)
-		return nil, r.interrupted()
+		in.stop(r, done)
+		return nil, r.stopped()
 	}
 }
 
@@ -90,34 +101,75 @@ func (r *run) call(entry string) error {
 	return nil
 }
 
-// patience is how long an interrupted cell may take to come to rest before the next one starts without waiting for it.
-const patience = time.Second
+// patience is how long an interrupted cell may take to come to rest before the next one starts without waiting for it;
+// the goroutines of earlier cells get less.
+const (
+	patience      = time.Second
+	otherPatience = 20 * time.Millisecond
+)
 
-// stop ends all interpreted code. It does not wait: the next cell does.
-func (in *Interpreter) stop(done <-chan error) {
+// stop ends all interpreted code: the running cell r, whose goroutine says so on done, and the goroutines of all cells. It
+// does not wait; the next cell does, and takes in.notes.
+func (in *Interpreter) stop(r *run, done chan error) {
 	id := in.vm.stop()
-	for _, r := range in.goroutines.runs() {
-		r.cancel(context.Canceled)
+	for _, other := range in.goroutines.runs() {
+		other.cancel(context.Canceled)
 	}
+	before := in.goroutines.others.Load()
 	settled := make(chan struct{})
 	in.settled = settled
 	go func() {
 		defer close(settled)
 		defer in.vm.restore(id)
-		for end := time.Now().Add(patience); time.Now().Before(end); {
+		start := time.Now()
+		ended := false
+		for {
 			in.vm.wake()
 			select {
 			case <-done:
-				return
+				ended = true
 			case <-time.After(time.Millisecond):
 			}
+			waited := time.Since(start)
+			others := otherPatience
+			if errors.Is(context.Cause(r.ctx), errStack) {
+				others = patience // they have deep stacks to leave, and would trip the watchdog again
+			}
+			if ended && (in.goroutines.others.Load() == 0 || waited > others) || waited > patience {
+				break
+			}
+		}
+		if n := before - in.goroutines.others.Load(); n > 0 {
+			in.notes = append(in.notes, fmt.Sprintf("the interrupt of cell[%d] also stopped %s that cells had started", r.n, count(n, "goroutine")))
+		}
+		if !ended {
+			in.notes = append(in.notes, fmt.Sprintf("cell[%d] was interrupted while it waited in compiled code; that call goes on until it returns, then the cell ends", r.n))
+			in.goroutines.others.Add(1)
+			go func() {
+				<-done
+				in.goroutines.others.Add(-1)
+			}()
 		}
 	}()
 }
 
-func (r *run) interrupted() error {
+func count(n int64, what string) string {
+	if n == 1 {
+		return "a " + what
+	}
+	return fmt.Sprintf("%d %ss", n, what)
+}
+
+// stopped is the error of a cell that was interrupted, by the reader or by the watchdog.
+func (r *run) stopped() error {
+	if err := context.Cause(r.ctx); errors.Is(err, errStack) {
+		return &Error{Name: "panic", Value: err.Error(), Trace: []string{"panic: " + err.Error()}}
+	}
 	return &Error{Name: "interrupted", Value: "interrupted", Trace: []string{"interrupted"}}
 }
+
+// leave ends a cell's goroutine that was left behind by an interrupt and has woken up.
+func (in *Interpreter) leave() { runtime.Goexit() }
 
 // failed is the error of a cell whose last expression is an error.
 func (r *run) failed(err error) error {
