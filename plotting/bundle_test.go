@@ -173,7 +173,7 @@ func TestRenderCard(t *testing.T) {
 		"  states                1, of which 1 recurrent and distinct\n" +
 		"  delay                 none\n" +
 		"  data                  P(1) = 0.5\n" +
-		"  decoding              decodable; data that differ agree in 0 symbols at most"
+		"  decoding              decodable, words told apart within 1 symbol"
 	if diff := cmp.Diff(want, b.Data[mimeText]); diff != "" {
 		t.Errorf("text/plain (-want +got):\n%s", diff)
 	}

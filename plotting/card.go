@@ -57,7 +57,7 @@ func rateFact(c *linecode.Code) string {
 func decodingFact(c *linecode.Code) string {
 	v := c.Decodable()
 	if v.Decodable {
-		return "decodable; data that differ agree in " + plural(v.Delay, "symbol") + " at most"
+		return "decodable, words told apart within " + plural(v.Delay+1, "symbol")
 	}
 	return v.String()
 }

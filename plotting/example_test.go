@@ -140,5 +140,5 @@ func ExampleRender() {
 	//   states                2, of which 2 recurrent and distinct
 	//   delay                 none
 	//   data                  P(1) = 0.5
-	//   decoding              decodable; data that differ agree in 0 symbols at most
+	//   decoding              decodable, words told apart within 1 symbol
 }
