@@ -12,6 +12,7 @@ import (
 	"math"
 	"regexp"
 	"strings"
+	"sync"
 	"testing"
 	"unicode"
 	"unicode/utf8"
@@ -273,4 +274,23 @@ func TestFigureGoesOn(t *testing.T) {
 	if again, _ := f.SVG(); again != before {
 		t.Error("drawing changed the plot")
 	}
+}
+
+// TestFigureTogether: goroutines may show one figure at the same time.
+func TestFigureTogether(t *testing.T) {
+	f := newSpectrum(fakes(120), false, 6e6).Figure
+	svg, _ := f.SVG()
+	text := f.String()
+	var wait sync.WaitGroup
+	for range 4 {
+		wait.Go(func() {
+			if again, err := f.SVG(); err != nil || again != svg {
+				t.Errorf("the SVG differs (%v)", err)
+			}
+			if f.String() != text {
+				t.Error("the text differs")
+			}
+		})
+	}
+	wait.Wait()
 }

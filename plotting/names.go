@@ -99,8 +99,11 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 				if off > height {
 					continue
 				}
-				if inCells {
-					y = vg.Length(math.Round(float64(y/cellHeight))) * cellHeight
+				if inCells { // whole rows, that next to the curve
+					y = vg.Length(math.Ceil(float64(high/cellHeight))) * cellHeight
+					if side == 1 {
+						y = vg.Length(math.Floor(float64(low/cellHeight))-1) * cellHeight
+					}
 				}
 				box := vg.Rectangle{Min: vg.Point{X: x, Y: y}, Max: vg.Point{X: x + width, Y: y + height}}
 				if box.Min.Y < c.Min.Y || box.Max.Y > c.Max.Y || overlaps(box, taken) {
