@@ -40,7 +40,7 @@ func (c *Code) Chain() *Chain {
 	c.mu.Lock()
 	defer c.mu.Unlock()
 	if c.joint == nil {
-		joint, err := c.join(page.Context())
+		joint, err := c.join(page.Context(), maxEdges)
 		if err != nil {
 			panic(err)
 		}
@@ -49,8 +49,8 @@ func (c *Code) Chain() *Chain {
 	return c.joint
 }
 
-// join makes the joint chain.
-func (c *Code) join(ctx context.Context) (*Chain, error) {
+// join makes the joint chain, of no more than about limit edges.
+func (c *Code) join(ctx context.Context, limit int) (*Chain, error) {
 	m, data := c.machine, c.data
 	chain := &Chain{Name: c.name}
 	if data.String() != source.Random().String() {
@@ -95,9 +95,9 @@ func (c *Code) join(ctx context.Context) (*Chain, error) {
 			return nil, interrupted(ctx, "joining the data to", c.name)
 		}
 		words(from, 0, 0, pairs[from].data, 1)
-		if len(chain.Edges) > maxEdges {
+		if len(chain.Edges) > limit {
 			return nil, fmt.Errorf("linecode: %s with %v gives a chain of more than %d edges (%d states of the code, %d of the data, %d words); take a smaller code or data with fewer states",
-				c.name, data, maxEdges, m.states, data.States(), m.words())
+				c.name, data, limit, m.states, data.States(), m.words())
 		}
 	}
 	chain.States = len(pairs)

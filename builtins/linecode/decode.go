@@ -171,7 +171,7 @@ func (d *decoding) fault(i int, symbol int32) error {
 	if d.resume == nil {
 		d.resume = newResumption(d.t)
 	}
-	d.start(i, d.resume.places(i))
+	d.start(i, first(d.resume.places(i), d.nodeOf(now)))
 	if err := d.skip(d.m.delay); err != nil {
 		return err
 	}
@@ -180,6 +180,16 @@ func (d *decoding) fault(i int, symbol int32) error {
 		return err
 	}
 	return d.skip(1) // no state continues with it: take it as unread
+}
+
+// first returns the places with the one at a node, if it is among them, before the others.
+func first(places []place, node int32) []place {
+	i := slices.IndexFunc(places, func(p place) bool { return p.node == node })
+	if i <= 0 {
+		return places
+	}
+	moved := append([]place{places[i]}, places[:i]...)
+	return append(moved, places[i+1:]...)
 }
 
 // renew makes the automaton anew when it has become too large, from the last place that all survivors have come

@@ -60,7 +60,7 @@ func (e *enumeration) run(ctx context.Context) (err error) {
 		return err
 	}
 	for e.state = 0; e.state < len(e.states); e.state++ {
-		if (e.state+1)<<e.spec.Bits > maxSteps {
+		if len(e.states)<<e.spec.Bits > maxSteps {
 			return fmt.Errorf("more than %d steps: %d states so far with %d words each; merge states or shorten the words", maxSteps, len(e.states), 1<<e.spec.Bits)
 		}
 		for e.word = 0; e.word < 1<<e.spec.Bits; e.word++ {
@@ -102,7 +102,7 @@ func (e *enumeration) run(ctx context.Context) (err error) {
 func (e *enumeration) enter(state any) (int32, error) {
 	if state != nil && !reflect.ValueOf(state).Comparable() {
 		if len(e.states) == 0 {
-			return 0, fmt.Errorf("Start is a %T, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions", state)
+			return 0, fmt.Errorf("the start is a %T, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions", state)
 		}
 		return 0, fmt.Errorf("the state after Step %s is a %T, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions", e.where(), state)
 	}
