@@ -1,6 +1,7 @@
 package plotting
 
 import (
+	"cmp"
 	"fmt"
 	"reflect"
 	"slices"
@@ -138,10 +139,10 @@ func (p *printer) print(v reflect.Value, depth int) {
 			return
 		case reflect.Map:
 			p.WriteString("map[")
-			keys := sortedKeys(v)
-			p.list(len(keys), depth, func(i int) reflect.Value {
-				p.WriteString(fmt.Sprint(keys[i]) + ":")
-				return v.MapIndex(keys[i])
+			entries := sortedEntries(v)
+			p.list(len(entries), depth, func(i int) reflect.Value {
+				p.WriteString(fmt.Sprint(entries[i].key) + ":")
+				return entries[i].value
 			})
 			p.WriteByte(']')
 			return
@@ -188,30 +189,27 @@ func (p *printer) list(n, depth int, at func(int) reflect.Value) {
 	}
 }
 
-// sortedKeys returns the keys of a map in an order that does not change from run to run: numbers and strings rise,
-// as fmt has them, others go by their text.
-func sortedKeys(m reflect.Value) []reflect.Value {
-	keys := m.MapKeys()
-	slices.SortFunc(keys, func(a, b reflect.Value) int {
-		switch {
-		case a.CanInt():
-			return order(a.Int(), b.Int())
-		case a.CanUint():
-			return order(a.Uint(), b.Uint())
-		case a.CanFloat():
-			return order(a.Float(), b.Float())
-		}
-		return strings.Compare(fmt.Sprint(a), fmt.Sprint(b))
-	})
-	return keys
-}
+// An entry is one of a map's.
+type entry struct{ key, value reflect.Value }
 
-func order[T int64 | uint64 | float64](a, b T) int {
-	switch {
-	case a < b:
-		return -1
-	case a > b:
-		return 1
+// sortedEntries returns a map's entries in an order that does not change from run to run: numbers rise, as fmt has them,
+// other keys go by their text.
+func sortedEntries(m reflect.Value) []entry {
+	var out []entry
+	for it := m.MapRange(); it.Next(); {
+		out = append(out, entry{it.Key(), it.Value()})
 	}
-	return 0
+	slices.SortStableFunc(out, func(x, y entry) int {
+		switch a, b := x.key, y.key; {
+		case a.CanInt():
+			return cmp.Compare(a.Int(), b.Int())
+		case a.CanUint():
+			return cmp.Compare(a.Uint(), b.Uint())
+		case a.CanFloat():
+			return cmp.Compare(a.Float(), b.Float())
+		default:
+			return strings.Compare(fmt.Sprint(a), fmt.Sprint(b))
+		}
+	})
+	return out
 }

@@ -172,18 +172,23 @@ func words(c coder, bits []byte, period float64) []word {
 	if n > mostWords {
 		return nil
 	}
+	length := func(words int) int {
+		symbols, err := c.Encode(bits[:words*c.Bits()])
+		if err != nil {
+			panic(fmt.Errorf("plotting: no waveform of the first %d bits: %w", words*c.Bits(), err))
+		}
+		return len(symbols)
+	}
+	tail := length(0) // what the encoder owes at the end anyway
 	var out []word
 	grown := 0
 	for i := range n {
-		symbols, err := c.Encode(bits[:(i+1)*c.Bits()])
-		if err != nil {
-			panic(fmt.Errorf("plotting: no waveform of the first %d bits: %w", (i+1)*c.Bits(), err))
-		}
-		w := word{from: float64(grown) * period, to: float64(len(symbols)) * period}
+		w := word{from: float64(grown) * period}
+		grown = length(i+1) - tail
+		w.to = float64(grown) * period
 		for _, b := range bits[i*c.Bits() : (i+1)*c.Bits()] {
 			w.bits += strconv.Itoa(int(b))
 		}
-		grown = len(symbols)
 		out = append(out, w)
 	}
 	return out

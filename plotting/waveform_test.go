@@ -57,7 +57,7 @@ func TestWaveSmooth(t *testing.T) {
 	}
 }
 
-// stuffing puts a 0 after every two 1s; framed puts a mark before every word of two bits.
+// stuffing puts a 0 after every two 1s.
 type stuffing struct{ marks }
 
 func (stuffing) Encode(bits []byte) (out []float64, err error) {
@@ -74,7 +74,16 @@ func (stuffing) Encode(bits []byte) (out []float64, err error) {
 	return out, nil
 }
 
+// framed puts a mark before every word of two bits.
 type framed struct{ marks }
+
+// tailed owes two symbols at the end.
+type tailed struct{ marks }
+
+func (c tailed) Encode(bits []byte) ([]float64, error) {
+	out, err := c.marks.Encode(bits)
+	return append(out, 0, 0), err
+}
 
 func (framed) Bits() int { return 2 }
 func (framed) Encode(bits []byte) (out []float64, err error) {
@@ -99,6 +108,7 @@ func TestWords(t *testing.T) {
 		{"one symbol a bit", marks{}, []byte{1, 0}, []word{{0, 1, "1"}, {1, 2, "0"}}},
 		{"stuffed", stuffing{}, []byte{1, 1, 0, 1}, []word{{0, 1, "1"}, {1, 3, "1"}, {3, 4, "0"}, {4, 5, "1"}}},
 		{"framed words", framed{}, []byte{1, 0, 0, 1}, []word{{0, 3, "10"}, {3, 6, "01"}}},
+		{"with a tail", tailed{}, []byte{1, 0}, []word{{0, 1, "1"}, {1, 2, "0"}}},
 		{"too many to write", marks{}, make([]byte, mostWords+1), nil},
 	} {
 		if diff := cmp.Diff(tt.want, words(tt.code, tt.bits, 1), cmp.AllowUnexported(word{})); diff != "" {
