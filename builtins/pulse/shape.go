@@ -50,8 +50,11 @@ func (s Shape) Energy(nu float64) float64 {
 		p := &parts[0] // a rectangle: the commonest shape needs one sine
 		a := real(p.c0) * p.width
 		if turns := nu * p.width; turns != 0 {
-			_, sin := cis(turns / 2)
-			a *= sin / (math.Pi * turns)
+			if r := turns - math.Round(turns); r != 0 {
+				a *= math.Sin(math.Pi*r) / (math.Pi * turns)
+			} else {
+				a = 0
+			}
 		}
 		return a * a
 	}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/floats"
 )
@@ -48,7 +49,12 @@ func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 		if lags >= first && recentred(q) {
 			bound := a.bound()
 			if bound*float64(q+8) <= 1e-16*a.power() {
-				return newForm(p.width, a.trim(), nil), nil
+				form := newForm(p.width, a.trim(), nil)
+				num, den, err := a.ratio(ctx, form.lags[0])
+				if den != nil {
+					form.even[0], form.under, form.length = newSeries(num), newSeries(den), p.length
+				}
+				return form, err
 			}
 			if lags >= check {
 				check = 2 * lags
@@ -69,7 +75,8 @@ func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 // An autocorr is the state of the recursion.
 type autocorr struct {
 	p     *process
-	f     [][]float64 // f[k*width+j] = K^q f of position k and component j; nil if zero
+	first [][]float64 // f[k*width+j] of position k and component j; nil if zero
+	f     [][]float64 // K^q f
 	u     [][]float64 // u[i*width+j]
 	size  float64     // sum of |u|
 	lags  [][]float64 // lags[i*width+j][l]
@@ -100,11 +107,15 @@ func newAutocorr(p *process) *autocorr {
 		for n2 := k * w; n2 < len(p.out); n2++ {
 			a.lags[j*w+n2%w][n2/w-k] += floats.Dot(weighed, p.out[n2]) / float64(p.length)
 		}
-		if largest(f) <= 1e-15*largest(v) {
+		if largest(f) <= 1e-15*p.size {
 			a.f[n] = nil
 		}
 		floats.Scale(1/float64(p.length), u)
 		a.size += floats.Norm(u, 1)
+	}
+	a.first = make([][]float64, len(a.f))
+	for n, f := range a.f {
+		a.first[n] = slices.Clone(f)
 	}
 	a.step1 = newSparse(p)
 	return a

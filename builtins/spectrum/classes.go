@@ -25,6 +25,9 @@ func (m *machine) closed(ctx context.Context) ([]*machine, []float64, error) {
 			sets = append(sets, set)
 		}
 	}
+	if len(sets) == 1 && len(sets[0]) == m.states {
+		return []*machine{m}, []float64{1}, nil
+	}
 	prob, err := g.Absorption(ctx, m.start, sets)
 	if err != nil {
 		return nil, nil, err

@@ -28,16 +28,27 @@ type machine struct {
 type lexicon struct {
 	drive  *pulse.Drive
 	levels []float64
+	many   map[float64]int32  // the numbers of all levels but the first few
 	waves  map[[2]int32]int32 // by numbers of the levels before and now
 	shapes []pulse.Shape
 }
 
-// level numbers a level. Codes have few: a walk along them is faster than a hash.
+// level numbers a level. Codes have few: a walk along them is faster than a hash, up to a point.
 func (x *lexicon) level(a float64) int32 {
-	for i, b := range x.levels {
+	const few = 16
+	for i, b := range x.levels[:min(few, len(x.levels))] {
 		if a == b {
 			return int32(i)
 		}
+	}
+	if len(x.levels) >= few {
+		if n, ok := x.many[a]; ok {
+			return n
+		}
+		if x.many == nil {
+			x.many = map[float64]int32{}
+		}
+		x.many[a] = int32(len(x.levels))
 	}
 	x.levels = append(x.levels, a)
 	return int32(len(x.levels) - 1)
@@ -75,6 +86,7 @@ func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []
 	}
 	m := &machine{states: ch.States, start: start(ch), edges: make([]edge, 0, len(ch.Edges))}
 	words := make([]int32, 0, symbols)
+	number := int32(0)
 	for i := range ch.Edges {
 		if i%4096 == 0 && ctx.Err() != nil {
 			return nil, nil, context.Cause(ctx)
@@ -84,8 +96,11 @@ func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []
 			continue
 		}
 		from := len(words)
-		for _, a := range e.Levels {
-			words = append(words, x.level(a))
+		for k, a := range e.Levels {
+			if k == 0 || a != e.Levels[k-1] {
+				number = x.level(a)
+			}
+			words = append(words, number)
 		}
 		m.edges = append(m.edges, edge{int32(e.From), int32(e.To), e.P, words[from:len(words):len(words)]})
 	}
@@ -190,7 +205,7 @@ func check(ch *linecode.Chain) error {
 		}
 		leaves[e.From] += e.P
 		for _, a := range e.Levels {
-			if math.IsNaN(a) || math.IsInf(a, 0) {
+			if a-a != 0 { // NaN and infinities
 				return fmt.Errorf("spectrum: chain %q: edge %d emits level %v; levels are finite numbers", ch.Name, i, a)
 			}
 		}

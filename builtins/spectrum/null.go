@@ -56,7 +56,7 @@ func (p *process) densities(ctx context.Context, basis []pulse.Shape, scale floa
 		if near.taylr == nil {
 			// Unless the sums are much larger than the levels, their form has all the digits everywhere.
 			top := max(near.form.power(0), near.form.at(newAngle(0), []complex128{1}))
-			if math.Pow(4, float64(near.order))*top < 1e3*p.variance() {
+			if math.Pow(4, float64(near.order))*top < 1e3*p.power {
 				return near.form.raised(near.order), nil, nil
 			}
 		}
@@ -70,11 +70,11 @@ func (p *process) null(basis []pulse.Shape, scale float64) (*null, *process) {
 	if p.width == 1 {
 		q, order := p, 0
 		for order < mostOrder {
-			x, ok := q.sums(q.out)
+			x, size, ok := q.sums(q.out, q.size)
 			if !ok {
 				break
 			}
-			next := q.process(1, x)
+			next := q.process(1, x, size)
 			if next.zero(scale) {
 				break
 			}
@@ -99,18 +99,17 @@ func (p *process) null(basis []pulse.Shape, scale float64) (*null, *process) {
 }
 
 // sums returns the running sums of a scalar that the edges emit, before each position, if they are bounded: then the sum
-// is a function of the state. The scalar must have mean 0.
-func (l *chainLaw) sums(b [][]float64) ([][]float64, bool) {
+// is a function of the state. The scalar must have mean 0 and numbers no larger than size. The sums' size comes back too.
+func (l *chainLaw) sums(b [][]float64, size float64) ([][]float64, float64, bool) {
 	m := l.machine
 	total := make([]float64, len(m.edges))
-	top := 0.0
 	for _, v := range b {
 		floats.Add(total, v)
-		top += largest(v)
 	}
-	x, ok := l.potential(total, top)
+	size *= float64(len(b))
+	x, ok := l.potential(total, size)
 	if !ok {
-		return nil, false
+		return nil, 0, false
 	}
 	out := vectors(len(b), len(m.edges))
 	for i := range m.edges {
@@ -119,11 +118,11 @@ func (l *chainLaw) sums(b [][]float64) ([][]float64, bool) {
 	for k := 1; k < len(b); k++ {
 		floats.AddTo(out[k], out[k-1], b[k-1])
 	}
-	return out, true
+	return out, largest(x) + size, true
 }
 
 // potential returns x with x[to] = x[from] + gain[e] for every edge, x[0] = 0, if there is one. Sums that should agree
-// may differ by the rounding of a mean; scale is the largest gain that there could be.
+// may differ by the rounding of means.
 func (l *chainLaw) potential(gain []float64, scale float64) ([]float64, bool) {
 	m := l.machine
 	tolerance := 1e-10 * scale
@@ -151,7 +150,7 @@ func (l *chainLaw) potential(gain []float64, scale float64) ([]float64, bool) {
 
 // areas goes from order to order as the comment of null says and returns the last x, the coefficients of D_j and the
 // order that was reached.
-func (p *process) areas(basis []pulse.Shape) (x, d [][]float64, order int) {
+func (p *process) areas(basis []pulse.Shape) (x *process, d [][]float64, order int) {
 	d = make([][]float64, len(basis))
 	for j, s := range basis {
 		d[j] = make([]float64, taylorTerms)
@@ -165,20 +164,24 @@ func (p *process) areas(basis []pulse.Shape) (x, d [][]float64, order int) {
 		}
 	}
 	unit := rectangle() // coefficients of (1/z - 1)^k E
-	x = vectors(p.length, len(p.mass))
+	x = &process{out: vectors(p.length, len(p.mass))}
 	for order < mostOrder {
 		b := vectors(p.length, len(p.mass))
+		size := x.size
+		for j := range d {
+			size += p.size * math.Abs(d[j][order])
+		}
 		for k := range b {
-			copy(b[k], x[k])
+			copy(b[k], x.out[k])
 			for j := range d {
 				floats.AddScaled(b[k], d[j][order], p.out[k*p.width+j])
 			}
 		}
-		next, ok := p.sums(b)
+		next, size, ok := p.sums(b, size)
 		if !ok {
 			break
 		}
-		x = p.process(1, next).out
+		x = p.process(1, next, size)
 		for j := range d {
 			k := d[j][order]
 			for n := range d[j] {
@@ -218,13 +221,13 @@ func advance(c []float64) []float64 {
 }
 
 // join is the process of the vector (x, c).
-func (p *process) join(x [][]float64) *process {
+func (p *process) join(x *process) *process {
 	var out [][]float64
-	for k, v := range x {
+	for k, v := range x.out {
 		out = append(out, v)
 		out = append(out, p.out[k*p.width:(k+1)*p.width]...)
 	}
-	return p.process(p.width+1, out)
+	return p.process(p.width+1, out, max(x.size, p.size))
 }
 
 // at is the form at the angle t; energy is |G|^2 at the full frequency, which only one pulse needs.

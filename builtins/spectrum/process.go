@@ -55,69 +55,66 @@ type process struct {
 	width int         // components of the vector
 	out   [][]float64 // out[k*width+j][e]: component j at position k of edge e
 	mean  [][]float64 // mean[k*width+j][c] in cyclic class c
+	power float64     // the sum over the components of the mean square of out, a symbol
+	size  float64     // no number in out is larger: what rounding is measured by
 }
 
-// process takes the mean of each cyclic class off out, in place.
-func (l *chainLaw) process(width int, out [][]float64) *process {
-	p := &process{chainLaw: l, width: width, out: out, mean: vectors(len(out), l.period)}
+// process takes the mean of each cyclic class off out, in place. No number in out is larger than size.
+func (l *chainLaw) process(width int, out [][]float64, size float64) *process {
+	p := &process{chainLaw: l, width: width, out: out, mean: vectors(len(out), l.period), size: 2 * size}
 	for n, v := range out {
-		mean := p.mean[n]
-		if l.period == 1 {
-			mean[0] = floats.Dot(l.mass, v)
-			floats.AddConst(-mean[0], v)
-			continue
-		}
-		for s, c := range l.cyc {
-			lo, hi := l.head[s], l.head[s+1]
-			mean[c] += floats.Dot(l.mass[lo:hi], v[lo:hi])
-		}
-		for c := range mean {
-			mean[c] *= float64(l.period) // each cyclic class has the probability 1/period
-		}
-		for s, c := range l.cyc {
-			for i := l.head[s]; i < l.head[s+1]; i++ {
-				v[i] -= mean[c]
-			}
-		}
+		l.centre(v, p.mean[n])
+	}
+	work := make([]float64, len(l.mass))
+	for _, v := range out {
+		p.power += floats.Dot(floats.MulTo(work, l.mass, v), v) / float64(l.length)
 	}
 	return p
+}
+
+// centre takes the mean of each cyclic class off v.
+func (l *chainLaw) centre(v, mean []float64) {
+	if l.period == 1 {
+		mean[0] = floats.Dot(l.mass, v)
+		floats.AddConst(-mean[0], v)
+		return
+	}
+	for s, c := range l.cyc {
+		lo, hi := l.head[s], l.head[s+1]
+		mean[c] += floats.Dot(l.mass[lo:hi], v[lo:hi])
+	}
+	for c := range mean {
+		mean[c] *= float64(l.period) // each cyclic class has the probability 1/period
+	}
+	for s, c := range l.cyc {
+		for i := l.head[s]; i < l.head[s+1]; i++ {
+			v[i] -= mean[c]
+		}
+	}
 }
 
 // symbols is the process of the basis coefficients of the symbols' waveforms: coef[w] are those of waveform w.
 func (l *chainLaw) symbols(width int, coef [][]float64) *process {
 	edges := l.machine.edges
 	out := vectors(l.length*width, len(edges))
+	size := 0.0
 	for j := range width {
 		of := make([]float64, len(coef)) // of each waveform
 		for w := range coef {
 			of[w] = coef[w][j]
 		}
+		size = max(size, largest(of))
 		for i := range edges {
 			for k, w := range edges[i].word {
 				out[k*width+j][i] = of[w]
 			}
 		}
 	}
-	return l.process(width, out)
-}
-
-// product is the mean of the product of two rows.
-func (l *chainLaw) product(a, b, work []float64) float64 {
-	return floats.Dot(floats.MulTo(work, l.mass, a), b)
-}
-
-// variance is the sum over the components of the mean square, a symbol.
-func (p *process) variance() float64 {
-	work := make([]float64, len(p.mass))
-	sum := 0.0
-	for _, v := range p.out {
-		sum += p.product(v, v, work)
-	}
-	return sum / float64(p.length)
+	return l.process(width, out, size)
 }
 
 // zero tells whether the process is its mean and rounding: scale is the mean square that rounding is measured by.
-func (p *process) zero(scale float64) bool { return p.variance() <= 1e-26*scale }
+func (p *process) zero(scale float64) bool { return p.power <= 1e-26*scale }
 
 // vectors makes n vectors of one size in one piece of memory.
 func vectors(n, size int) [][]float64 {

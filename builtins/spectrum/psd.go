@@ -152,7 +152,7 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 	if out.tones, err = symbols.means(ctx, lags); err != nil {
 		return nil, err
 	}
-	scale := symbols.variance()
+	scale := symbols.power
 	for j := range width {
 		scale += out.tones.power[(j*width+j)*lags]
 	}
@@ -268,17 +268,30 @@ func (p *PSD) evaluate(ctx context.Context, dst, nu []float64) {
 			size = min(size, 1+int(2e7/c.form.cost()))
 		}
 	}
-	angles := make([]angle, size)
-	work := make([]float64, 2*size)
+	w := newWorkspace(min(size, len(dst)))
 	for len(dst) > 0 {
 		stop(ctx)
 		n := min(size, len(dst))
-		p.some(dst[:n], nu[:n], angles[:n], work[:n], work[size:size+n])
+		p.some(dst[:n], nu[:n], w)
 		dst, nu = dst[n:], nu[n:]
 	}
 }
 
-func (p *PSD) some(dst, nu []float64, t []angle, energy, raw []float64) {
+// A workspace is what a block of frequencies needs.
+type workspace struct {
+	t, other          []angle
+	energy, raw, work []float64
+}
+
+func newWorkspace(n int) *workspace {
+	v := vectors(3, n)
+	return &workspace{make([]angle, n), make([]angle, n), v[0], v[1], v[2]}
+}
+
+// some is evaluate for one block.
+func (p *PSD) some(dst, nu []float64, w *workspace) {
+	n := len(dst)
+	t, energy, raw := w.t[:n], w.energy[:n], w.raw[:n]
 	clear(dst)
 	for i, x := range nu {
 		t[i] = newAngle(x)
@@ -291,7 +304,7 @@ func (p *PSD) some(dst, nu []float64, t []angle, energy, raw []float64) {
 			if c.form == nil {
 				continue
 			}
-			c.form.scalar(raw, t)
+			c.form.scalar(raw, t, w.other[:n], w.work[:n])
 			least := nearPart * c.form.power(0)
 			for i, v := range raw {
 				if v < least && c.near != nil && math.Abs(t[i].nu) < c.near.reach {

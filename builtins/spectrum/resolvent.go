@@ -25,7 +25,7 @@ type solveSpace struct{ b, u, w, a []complex128 }
 
 // newResolvent returns nil if the subspace has more dimensions than rank.
 func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, error) {
-	basis, h, err := a.arnoldi(ctx, rank)
+	basis, h, err := a.arnoldi(ctx, a.f, rank)
 	if err != nil || basis == nil {
 		return nil, err
 	}
@@ -45,14 +45,14 @@ func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, er
 	return r, nil
 }
 
-// arnoldi returns an orthonormal basis of the smallest subspace that holds the functions f and is mapped into itself by
+// arnoldi returns an orthonormal basis of the smallest subspace that holds the functions and is mapped into itself by
 // K, and the matrix of K on it; nil if it has more than rank dimensions.
 //
 // A direction is new if what the others leave of it is more than rounding, and if it can still reach the result: weight
 // is the product of the remainders on the way to it.
-func (a *autocorr) arnoldi(ctx context.Context, rank int) (basis, h [][]float64, err error) {
+func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int) (basis, h [][]float64, err error) {
 	scale := 0.0
-	for _, f := range a.f {
+	for _, f := range functions {
 		scale = max(scale, floats.Norm(f, 2))
 	}
 	var weight []float64
@@ -77,7 +77,7 @@ func (a *autocorr) arnoldi(ctx context.Context, rank int) (basis, h [][]float64,
 		weight = append(weight, reach*left)
 		return append(c, left)
 	}
-	for _, f := range a.f {
+	for _, f := range functions {
 		if f != nil {
 			orthogonalise(append([]float64(nil), f...), 1)
 		}

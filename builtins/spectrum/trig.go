@@ -30,6 +30,14 @@ func newAngle(nu float64) angle {
 	return angle{nu: r, cos: 1 - 2*sin*sin, sin: 2 * sin * cos, half: sin, other: cos}
 }
 
+// times is the angle k t.
+func (t angle) times(k int) angle {
+	if k == 1 {
+		return t
+	}
+	return newAngle(t.nu * float64(k))
+}
+
 // even is the sum of a[k] cos kt, odd that of a[k] sin kt.
 //
 // They share Reinsch's form of Clenshaw's recurrence (J. Stoer and R. Bulirsch, Introduction to Numerical Analysis,
@@ -69,7 +77,8 @@ func (s series) reinsch(t angle) (d, b, factor float64) {
 // evens sets dst[i] to the sum of a[k] cos k t[i].
 //
 // Away from t = 0 and pi the plain recurrence of Clenshaw (1955), b[k] = a[k] + 2 cos(t) b[k+1] - b[k+2], loses no
-// more than 1/sin(t) in digits and is the fastest; eight angles at a time keep the processor's units busy.
+// more than 1/sin(t) in digits and is the fastest; six angles at a time keep the processor's
+// units busy.
 func (s series) evens(dst []float64, t []angle) {
 	const enough = 0.05 // least sine for the plain recurrence
 	if len(s.a) == 1 {
@@ -80,17 +89,12 @@ func (s series) evens(dst []float64, t []angle) {
 	}
 	i := 0
 	for ; i+6 <= len(t); i += 6 {
-		plain := true
-		for _, t := range t[i : i+6] {
-			plain = plain && math.Abs(t.sin) > enough
-		}
-		if !plain {
-			for n := i; n < i+6; n++ {
+		s.clenshaw(dst[i:i+6], t[i:i+6])
+		for n := i; n < i+6; n++ {
+			if math.Abs(t[n].sin) < enough {
 				dst[n] = s.even(t[n])
 			}
-			continue
 		}
-		s.clenshaw(dst[i:i+6], t[i:i+6])
 	}
 	for ; i < len(t); i++ {
 		dst[i] = s.even(t[i])
