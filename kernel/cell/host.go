@@ -3,8 +3,6 @@ package cell
 import (
 	"context"
 	"sync"
-
-	"linewright/plotting"
 )
 
 // pageState is what package page knows of the whole session.
@@ -19,7 +17,7 @@ type host struct{ in *Interpreter }
 
 func (h host) Show(v any, id string) {
 	r := h.in.here()
-	b, err := plotting.Render(v)
+	b, err := h.in.render(v, nil)
 	if err != nil {
 		panic(err)
 	}

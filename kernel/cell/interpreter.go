@@ -13,6 +13,7 @@ import (
 	"sync/atomic"
 
 	"github.com/traefik/yaegi/interp"
+	"golang.org/x/tools/go/types/typeutil"
 
 	"linewright/plotting"
 )
@@ -53,12 +54,16 @@ type Interpreter struct {
 	// the milliseconds of a check, never while a cell runs, so that completion answers meanwhile.
 	types     sync.Mutex
 	lib       *library
-	names     map[string]*entry       // live package-level declarations
-	imports   map[string]string       // names of the cells' own imports -> path
-	preloaded map[string]string       // names of packages that need no import -> path
-	slots     map[types.Object]string // the interpreter's names of live objects and of all types
-	phantoms  map[*types.Func]bool    // methods of cells that then did not compile
-	methods   map[types.Object]string // method -> the interpreter's variable that holds its function
+	names     map[string]*entry             // live package-level declarations
+	imports   map[string]string             // names of the cells' own imports -> path
+	preloaded map[string]string             // names of packages that need no import -> path
+	slots     map[types.Object]string       // the interpreter's names of live objects and of all types
+	phantoms  map[*types.Func]bool          // methods of cells that then did not compile
+	methods   map[types.Object]string       // method -> the interpreter's variable that holds its function
+	texts     map[*types.Func]reflect.Value // String and Error methods -> a pointer to the variable in methods
+	named     map[string]*types.TypeName    // the interpreter's name of a type -> the type
+	typeTable []types.Type                  // what the calls of typed in lowered code refer to
+	typeIDs   typeutil.Map
 	gens      generations
 	runs      int               // serial number of the last cell
 	aliases   map[string]string // package path -> name under which the interpreter imports it
@@ -95,7 +100,7 @@ func New(opt Options) (*Interpreter, error) {
 	in := &Interpreter{
 		opt: opt, lib: lib,
 		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
-		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, gens: generations{},
+		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]*types.TypeName{}, gens: generations{},
 		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
 		marked:     map[string]bool{},
 		tracks:     tracks{cells: map[int][]*function{}, marks: map[string]*int{}},
@@ -113,7 +118,7 @@ func New(opt Options) (*Interpreter, error) {
 	if _, err := in.vm.yaegi.Eval(`import ` + kernel + ` "linewright/cell"`); err != nil {
 		return nil, err
 	}
-	if _, err := in.vm.yaegi.Eval("var " + kernel + "run int"); err != nil {
+	if _, err := in.vm.yaegi.Eval("var " + kernel + "run int; func " + asError + "(err error) error { return err }"); err != nil {
 		return nil, err
 	}
 	v, err := in.vm.yaegi.Eval("&" + kernel + "run")
@@ -130,10 +135,12 @@ func New(opt Options) (*Interpreter, error) {
 func (in *Interpreter) hooks() interp.Exports {
 	return interp.Exports{
 		"linewright/cell/cell": {
-			"Show":    reflect.ValueOf(in.show),
-			"Recover": reflect.ValueOf(in.recovered),
-			"Go":      reflect.ValueOf(in.start),
-			"Leave":   reflect.ValueOf(in.leave),
+			"Show":     reflect.ValueOf(in.show),
+			"Recover":  reflect.ValueOf(in.recovered),
+			"Go":       reflect.ValueOf(in.start),
+			"Leave":    reflect.ValueOf(in.leave),
+			"Typed":    reflect.ValueOf(in.typed),
+			"TypeName": reflect.ValueOf(in.typeName),
 		},
 	}
 }
@@ -214,9 +221,28 @@ func (in *Interpreter) prepare(r *run, code string) (*program, error) {
 			return nil, err
 		}
 	}
+	if err := in.findTexts(u); err != nil {
+		return nil, err
+	}
 	in.tracks.add(u.src.n, p.functions)
 	in.commit(u, p)
 	return p, nil
+}
+
+// findTexts finds the variables of new String and Error methods.
+func (in *Interpreter) findTexts(u *unit) error {
+	for _, o := range u.objects {
+		fn, ok := o.(*types.Func)
+		if !ok || in.methods[fn] == "" || fn.Name() != "String" && fn.Name() != "Error" || in.texts[fn].IsValid() {
+			continue
+		}
+		v, err := in.vm.yaegi.Eval("&" + in.methods[fn])
+		if err != nil {
+			return err
+		}
+		in.texts[fn] = v
+	}
+	return nil
 }
 
 // mark finds the new marks in the interpreter's memory.
@@ -260,8 +286,11 @@ func (in *Interpreter) commit(u *unit, p *program) {
 				delete(in.slots, e.obj)
 			}
 		}
-		if fn, ok := o.(*types.Func); ok {
-			delete(in.phantoms, fn)
+		switch o := o.(type) {
+		case *types.Func:
+			delete(in.phantoms, o)
+		case *types.TypeName:
+			in.named[p.slots[o]] = o
 		}
 		delete(in.imports, name)
 		e := &entry{obj: o, cell: u.src.n, decl: u.texts[name], uses: p.uses[u.texts[name]]}

@@ -32,16 +32,18 @@ type lowering struct {
 	u         *unit
 	p         *program
 	bad       []problem
-	literals  int                    // function literals so far
-	temps     int                    // variables made so far
-	sets      [][2]string            // variables of methods and the functions that they are to hold
-	synthetic map[*ast.CallExpr]bool // calls that the lowering made
+	literals  int                                  // function literals so far
+	temps     int                                  // variables made so far
+	typed     map[*ast.CallExpr]map[int]types.Type // arguments whose static type goes with them
+	nameArgs  map[*ast.CallExpr][]int              // of these the ones of which only the type's name is printed
+	sets      [][2]string                          // variables of methods and the functions that they are to hold
+	synthetic map[*ast.CallExpr]bool               // calls that the lowering made
 }
 
 // lower rewrites a checked cell into Go that the interpreter runs well.
 func (in *Interpreter) lower(u *unit) (*program, error) {
 	in.runs++
-	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}}
+	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}, typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{}}
 	pos := u.src.fn.Body.Lbrace
 	l.name(pos)
 	for _, d := range u.decls {
@@ -314,6 +316,9 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 			return false
 		}
 	}
+	if call, ok := x.(*ast.CallExpr); ok {
+		l.findTyped(call)
+	}
 	if s, ok := x.(*ast.SelectorExpr); ok {
 		if id, ok := s.X.(*ast.Ident); ok {
 			if p, ok := l.u.info.Uses[id].(*types.PkgName); ok {
@@ -359,6 +364,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.Ident:
 		l.rename(n)
 	case *ast.CallExpr:
+		l.wrapTyped(n)
 		if id, ok := n.Fun.(*ast.Ident); ok && l.u.info.Uses[id] == types.Universe.Lookup("recover") {
 			l.synthetic[n] = true
 			c.Replace(l.hook("Recover", n.Pos(), n))

@@ -27,6 +27,7 @@ type machine struct {
 	yaegi *interp.Interpreter
 	id    *uint64
 	done  chan struct{}
+	pair  reflect.Type // of what it keeps in an any for a value of a type with methods
 }
 
 func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, error) {
@@ -50,7 +51,30 @@ func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, err
 		return nil, err
 	}
 	m.id, m.done = id, *done
-	return m, nil
+	return m, m.findPair()
+}
+
+// findPair finds the private type of interface values.
+func (m *machine) findPair() error {
+	if _, err := m.yaegi.Eval("type " + kernel + "pair int; func (" + kernel + "pair) M() {}"); err != nil {
+		return err
+	}
+	v, err := m.yaegi.Eval("[]any{" + kernel + "pair(1)}")
+	if err != nil {
+		return err
+	}
+	if list, ok := v.Interface().([]any); ok && len(list) == 1 {
+		t := reflect.TypeOf(list[0])
+		if t.Kind() == reflect.Struct {
+			value, ok1 := t.FieldByName("value")
+			_, ok2 := t.FieldByName("node")
+			if ok1 && ok2 && value.Type == reflect.TypeFor[reflect.Value]() {
+				m.pair = t
+				return nil
+			}
+		}
+	}
+	return errors.New("cell: this yaegi keeps interface values in another form; the pinned version is v0.16.1")
 }
 
 // field returns the address of a private field of the pinned yaegi.

@@ -11,6 +11,8 @@ import (
 const (
 	mark   = "ǀ"        // x + mark + generation
 	kernel = "k" + mark // the package by which lowered cells call this one
+
+	asError = kernel + "error" // a function of the interpreter that makes an error of its argument
 )
 
 var marked = regexp.MustCompile(`(?:\bmain\.)?` + `([\p{L}_][\p{L}\p{Nd}_]*?)` + mark + `\d+\b`)

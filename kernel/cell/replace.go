@@ -1,9 +1,12 @@
 package cell
 
 import (
+	"errors"
 	"log"
 	"os"
 	"reflect"
+	"slices"
+	"strings"
 	"time"
 
 	"github.com/traefik/yaegi/interp"
@@ -25,6 +28,10 @@ func (in *Interpreter) replacements() interp.Exports {
 		logs[name] = reflect.ValueOf(f)
 	}
 	return interp.Exports{
+		"errors/errors": {
+			"Is": reflect.ValueOf(in.errorIs),
+			"As": reflect.ValueOf(in.errorAs),
+		},
 		"log/log":   logs,
 		"os/os":     {"Exit": reflect.ValueOf(in.exit)},
 		"time/time": {"Sleep": reflect.ValueOf(in.sleep)},
@@ -51,4 +58,67 @@ func (in *Interpreter) sleep(d time.Duration) {
 	case <-t.C:
 	case <-in.here().ctx.Done():
 	}
+}
+
+// errorIs is errors.Is for cells: the interpreter wraps an error of a cell's type anew each time, so that identity is that of
+// what is inside.
+func (in *Interpreter) errorIs(err, target error) bool {
+	if errors.Is(err, target) {
+		return true
+	}
+	want := in.inside(target)
+	if !want.IsValid() || !want.Comparable() {
+		return false
+	}
+	return in.inChain(err, func(v reflect.Value) bool {
+		return v.Type() == want.Type() && v.Comparable() && v.Equal(want)
+	})
+}
+
+// errorAs is errors.As for cells, whose error types have no methods that the original could see.
+func (in *Interpreter) errorAs(err error, target any) bool {
+	p := reflect.ValueOf(target)
+	if p.Kind() == reflect.Pointer && !p.IsNil() {
+		if in.inChain(err, func(v reflect.Value) bool {
+			if v.Type() != p.Type().Elem() {
+				return false
+			}
+			p.Elem().Set(v)
+			return true
+		}) {
+			return true
+		}
+		if t := p.Type().Elem(); t.Kind() != reflect.Interface && !t.Implements(reflect.TypeFor[error]()) {
+			return false
+		}
+	}
+	return errors.As(err, target)
+}
+
+// inside returns the cell's value in an error, or an invalid value for a compiled error.
+func (in *Interpreter) inside(err error) reflect.Value {
+	v := reflect.ValueOf(err)
+	if v.Kind() != reflect.Struct || !strings.HasPrefix(v.Type().Name(), "_") || v.NumField() == 0 || v.Type().Field(0).Name != "IValue" {
+		return reflect.Value{}
+	}
+	s := &shown{in: in, v: v.Field(0)}
+	s.resolve()
+	return s.v
+}
+
+func (in *Interpreter) inChain(err error, found func(reflect.Value) bool) bool {
+	for err != nil {
+		if v := in.inside(err); v.IsValid() && found(v) {
+			return true
+		}
+		switch x := err.(type) {
+		case interface{ Unwrap() error }:
+			err = x.Unwrap()
+		case interface{ Unwrap() []error }:
+			return slices.ContainsFunc(x.Unwrap(), func(e error) bool { return in.inChain(e, found) })
+		default:
+			return false
+		}
+	}
+	return false
 }

@@ -187,6 +187,9 @@ func (in *Interpreter) describe(v any) string {
 	case fmt.Stringer:
 		return x.String()
 	}
+	if s := in.shown(v, nil); s != nil {
+		return fmt.Sprint(s)
+	}
 	return fmt.Sprint(v)
 }
 
