@@ -130,14 +130,13 @@ type visit struct {
 // decide returns an error only where it was interrupted.
 func (p *pairing) decide(ctx context.Context) (*Verdict, error) {
 	delay := int32(0)
-	undecided := &Verdict{Undecided: true}
 	for s := range p.t.m.states {
 		if ctx.Err() != nil {
 			return nil, ctx.Err()
 		}
 		p.t.root(s)
 		if len(p.t.nodes) > maxPlaces {
-			return undecided, nil
+			return &Verdict{Undecided: true}, nil
 		}
 	}
 	// Data part within one state, between two words: at any place through which two words come.
@@ -156,24 +155,92 @@ func (p *pairing) decide(ctx context.Context) (*Verdict, error) {
 		}
 		for i, one := range places {
 			for _, other := range places[:i] {
-				if one.node == other.node {
-					return p.witness(int(n.state), one, other, nil, -1), nil
+				v, longest, err := p.compare(ctx, int(n.state), one, other)
+				if v != nil || err != nil {
+					return v, err
 				}
-				start, _ := ordered(one.node, other.node)
-				last, cycle, err := p.search(ctx, start)
-				switch {
-				case err != nil:
-					return nil, err
-				case last != nil:
-					return p.witness(int(n.state), one, other, last, cycle), nil
-				case len(p.seen) > p.maxPairs:
-					return undecided, nil
-				}
-				delay = max(delay, n.depth+p.seen[start])
+				delay = max(delay, n.depth+longest)
 			}
 		}
 	}
+	v, unseen, err := p.opening(ctx)
+	if v != nil || err != nil {
+		return v, err
+	}
+	delay = max(delay, unseen)
 	return &Verdict{Decodable: true, Delay: int(delay)}, nil
+}
+
+// compare looks at two encoders that parted in a state. It returns the verdict if their data are lost or the limit is
+// reached, and otherwise over how many symbols from here on they can agree.
+func (p *pairing) compare(ctx context.Context, state int, one, other place) (v *Verdict, longest int32, err error) {
+	if one.node == other.node {
+		return p.witness(state, one, other, nil, -1), 0, nil
+	}
+	start, _ := ordered(one.node, other.node)
+	last, cycle, err := p.search(ctx, start)
+	switch {
+	case err != nil:
+		return nil, 0, err
+	case last != nil:
+		return p.witness(state, one, other, last, cycle), 0, nil
+	case len(p.seen) > p.maxPairs:
+		return &Verdict{Undecided: true}, 0, nil
+	}
+	return nil, p.seen[start], nil
+}
+
+// opening compares all data whose first symbols Encode leaves out, with the delay: nothing tells these apart but what
+// follows. It returns as compare does, but over how many symbols in all data can agree.
+func (p *pairing) opening(ctx context.Context) (v *Verdict, longest int32, err error) {
+	m := p.t.m
+	if m.delay == 0 {
+		return nil, 0, nil
+	}
+	places := p.t.enter(nil, 0, nil)
+	for range m.delay {
+		var next []place
+		taken := make(map[int32]place)
+		for _, before := range places {
+			for _, kid := range p.t.children(before.node) {
+				for _, at := range p.t.arrive(nil, kid.node) {
+					at.words = slices.Concat(before.words, at.words)
+					if same, ok := taken[at.node]; ok {
+						return p.witness(0, same, at, nil, -1), 0, nil
+					}
+					taken[at.node] = at
+					next = append(next, at)
+				}
+			}
+			if ctx.Err() != nil {
+				return nil, 0, ctx.Err()
+			}
+			if len(next)*len(next)/2 > p.maxPairs {
+				return &Verdict{Undecided: true}, 0, nil
+			}
+		}
+		places = next
+	}
+	for i, one := range places {
+		for _, other := range places[:i] {
+			v, more, err := p.compare(ctx, 0, one, other)
+			if v != nil || err != nil {
+				return v, 0, err
+			}
+			longest = max(longest, int32(m.delay-p.parted(one.words, other.words))+more)
+		}
+	}
+	return nil, longest, nil
+}
+
+// parted returns the number of symbols from the start before the word in which two data first differ.
+func (p *pairing) parted(one, other []uint32) (symbols int) {
+	s := 0
+	for i := 0; i < min(len(one), len(other)) && one[i] == other[i]; i++ {
+		to, out := p.t.m.step(s, int(one[i]))
+		s, symbols = to, symbols+len(out)
+	}
+	return symbols
 }
 
 // search follows a pair to all that can come of it. Where data are lost it returns the places after the last pair of

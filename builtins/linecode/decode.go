@@ -148,7 +148,7 @@ func (d *decoding) step(symbol int32) (bool, error) {
 	if err != nil || number == none {
 		return false, err
 	}
-	if d.resume == nil && symbol != wildcard && d.a.moves[number].merged {
+	if d.resume == nil && d.a.moves[number].merged {
 		return false, errMerged
 	}
 	d.history = append(d.history, number)

@@ -369,3 +369,58 @@ func BenchmarkDecode(b *testing.B) {
 		})
 	}
 }
+
+// Decode takes what Encode gives, also from encoders with a delay line of any kind: the bits are those in which all
+// data agree that Encode makes these symbols of.
+func TestDecodeIsTheInverseOfEncode(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		states := rapid.IntRange(1, 3).Draw(t, "states")
+		next := rapid.SliceOfN(rapid.IntRange(0, states-1), 2*states, 2*states).Draw(t, "next")
+		levels := rapid.SampledFrom([]float64{-1, 0, 1})
+		out := rapid.SliceOfN(rapid.SliceOfN(levels, 1, 2), 2*states, 2*states).Draw(t, "out")
+		owed := rapid.SliceOfN(rapid.SliceOfN(levels, 0, 3), states, states).Draw(t, "owed")
+		c, err := New(Spec{
+			Bits: 1, Start: 0, Delay: rapid.IntRange(0, 3).Draw(t, "delay"),
+			Step: func(s any, w uint) (any, []float64) {
+				i := 2*s.(int) + int(w)
+				return next[i], out[i]
+			},
+			Flush: func(s any) []float64 { return owed[s.(int)] },
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		if !c.Decodable().Decodable {
+			t.Skip("not decodable")
+		}
+		sym, err := c.Encode(rapid.SliceOfN(rapid.ByteRange(0, 1), 0, 5).Draw(t, "bits"))
+		if err != nil || len(sym) == 0 {
+			t.Skip("nothing was sent")
+		}
+		var want []byte
+		for n := 0; n <= len(sym)+c.Delay(); n++ {
+			for x := range 1 << n {
+				data := make([]byte, n)
+				for k := range data {
+					data[k] = byte(x >> k & 1)
+				}
+				if same, _ := c.Encode(data); !slices.Equal(same, sym) {
+					continue
+				}
+				if want == nil {
+					want = data
+				}
+				for k := range want {
+					if k == len(data) || want[k] != data[k] {
+						want = want[:k]
+						break
+					}
+				}
+			}
+		}
+		bits, faults, err := c.Decode(sym)
+		if err != nil || len(faults) > 0 || !slices.Equal(bits, want) {
+			t.Fatalf("%v gives %v, want %v, faults %v, %v", sym, bits, want, faults, err)
+		}
+	})
+}

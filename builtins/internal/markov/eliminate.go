@@ -21,11 +21,12 @@ const (
 // the remaining states, so the rows stay probabilities (up to the loops, which never matter and are not kept).
 type elimination struct {
 	rows     [][]entry // per state, in rising order of the target
-	preds    [][]int32 // per state, the states whose rows may hold it; eliminated ones are skipped
+	preds    [][]int32 // per state, the states whose rows hold it, and eliminated ones, which are skipped
+	live     []int     // per state, how many of its preds are not eliminated
 	gone     []bool    // eliminated
 	absorbed []bool    // never to be eliminated
 	left     int       // states neither eliminated nor absorbing
-	products float64
+	spent    int       // products so far
 	scratch  []entry
 	queue    costs
 	stamp    []int // of each state's newest place in the queue
@@ -40,7 +41,7 @@ type entry struct {
 func newElimination(ctx context.Context, g *Graph, absorbing []bool) (*elimination, error) {
 	n := g.Len()
 	e := &elimination{
-		rows: make([][]entry, n), preds: make([][]int32, n), gone: make([]bool, n), absorbed: absorbing, stamp: make([]int, n),
+		rows: make([][]entry, n), preds: make([][]int32, n), live: make([]int, n), gone: make([]bool, n), absorbed: absorbing, stamp: make([]int, n),
 	}
 	at := make([]float64, n)
 	for s := range n {
@@ -80,13 +81,17 @@ func newElimination(ctx context.Context, g *Graph, absorbing []bool) (*eliminati
 func (e *elimination) precede(t int32, u int) {
 	if !e.absorbed[t] {
 		e.preds[t] = append(e.preds[t], int32(u))
+		e.live[t]++
 	}
 }
+
+// products returns the products that eliminating state s would take.
+func (e *elimination) products(s int) int { return len(e.rows[s]) * e.live[s] }
 
 // enqueue puts state s into the queue with the products that eliminating it would take.
 func (e *elimination) enqueue(s int) {
 	e.stamp[s]++
-	heap.Push(&e.queue, cost{len(e.rows[s]) * len(e.preds[s]), s, e.stamp[s]})
+	heap.Push(&e.queue, cost{e.products(s), s, e.stamp[s]})
 }
 
 // next returns the state that is cheapest to eliminate (H. M. Markowitz, "The elimination form of the inverse and its
@@ -114,14 +119,14 @@ func (e *elimination) take(s int) (row []entry, sum float64, from []entry) {
 		p := remove(&e.rows[u], int32(s))
 		from = append(from, entry{u, p / sum})
 		e.merge(int(u), row, p/sum)
-		e.products += float64(len(row) + len(e.rows[u]))
+		e.spent += len(row) + len(e.rows[u])
 	}
 	e.gone[s] = true
 	e.rows[s], e.preds[s] = nil, nil
 	e.left--
 	for _, r := range row {
 		if t := int(r.to); !e.absorbed[t] {
-			e.compact(t)
+			e.live[t]--
 			e.enqueue(t)
 		}
 	}
@@ -134,7 +139,7 @@ func (e *elimination) take(s int) (row []entry, sum float64, from []entry) {
 // full reports whether state s, the cheapest, is joined to so many of the others that the rest is better finished as
 // a dense matrix.
 func (e *elimination) full(s int) bool {
-	return e.left <= maxDense && 4*len(e.rows[s])*len(e.preds[s]) >= e.left*e.left
+	return e.left <= maxDense && 4*e.products(s) >= e.left*e.left
 }
 
 // merge adds f times row to the row of state u, loops left out.
@@ -162,24 +167,12 @@ func (e *elimination) merge(u int, row []entry, f float64) {
 	e.scratch = out
 }
 
-// compact drops eliminated states from the predecessors of t.
-func (e *elimination) compact(t int) {
-	live := e.preds[t][:0]
-	for _, u := range e.preds[t] {
-		if !e.gone[u] {
-			live = append(live, u)
-		}
-	}
-	e.preds[t] = live
-}
-
 // check returns an error where the work was interrupted or would outgrow its limits by eliminating s, the cheapest.
 func (e *elimination) check(ctx context.Context, s int) error {
 	if ctx.Err() != nil {
 		return context.Cause(ctx)
 	}
-	products := float64(len(e.rows[s])) * float64(len(e.preds[s]))
-	if products > maxDense*maxDense || e.products+products > maxProducts {
+	if n := e.products(s); n > maxDense*maxDense || e.spent+n > maxProducts {
 		return errFill
 	}
 	return nil

@@ -335,3 +335,19 @@ func TestInterrupt(t *testing.T) {
 		t.Errorf("Absorption: %v", err)
 	}
 }
+
+// A run of 1s that any 0 ends: state 0 has as many predecessors as there are states. The distribution is geometric.
+func TestStationaryWithAHub(t *testing.T) {
+	const n = 200000
+	pi := stationary(t, New(n, 2*n, func(i int) (int, int, float64) {
+		if i%2 == 0 {
+			return i / 2, 0, 0.5
+		}
+		return i / 2, (i/2 + 1) % n, 0.5
+	}))
+	for s, p := range pi[:1000] {
+		if want := math.Pow(0.5, float64(s+1)); math.Abs(p-want) > 1e-12*want {
+			t.Fatalf("pi[%d] = %g, want %g", s, p, want)
+		}
+	}
+}
