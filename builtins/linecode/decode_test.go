@@ -1,6 +1,7 @@
 package linecode
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"math"
@@ -280,6 +281,110 @@ func TestDecodeAgainstFollowingEveryData(t *testing.T) {
 			t.Fatalf("bits %v, want %s, faults %v", bits, want, faults)
 		}
 	})
+}
+
+// reachable returns the nodes at which an encoder can be after so many symbols, by following all of them.
+func reachable(t *tries, symbols int) []int32 {
+	a := newSurvivors(t)
+	var nodes []int32
+	for _, p := range t.enter(nil, 0, nil) {
+		nodes = append(nodes, p.node)
+	}
+	set := a.set(nodes)
+	for range symbols {
+		number, err := a.move(context.Background(), set, wildcard)
+		if err != nil {
+			panic(err)
+		}
+		set = a.moves[number].to
+	}
+	nodes = slices.Clone(a.sets[set])
+	slices.Sort(nodes)
+	return slices.Compact(nodes)
+}
+
+// Decoding resumes wherever an encoder can be: never in fewer places, and in no others once a code has started up.
+func TestPlacesToResume(t *testing.T) {
+	places := func(r *resumption, symbols int) []int32 {
+		var nodes []int32
+		for _, p := range r.places(symbols) {
+			nodes = append(nodes, p.node)
+		}
+		slices.Sort(nodes)
+		return nodes
+	}
+	rapid.Check(t, func(t *rapid.T) {
+		r := newResumption(newTries(anyMachine(t).machine))
+		symbols := rapid.IntRange(0, 12).Draw(t, "symbols")
+		found := places(r, symbols)
+		for _, node := range reachable(r.t, symbols) {
+			if _, ok := slices.BinarySearch(found, node); !ok {
+				t.Fatalf("after %d symbols the encoder can be at node %d, not among %v", symbols, node, found)
+			}
+		}
+	})
+	for _, name := range Names() {
+		r := newResumption(newTries(catalogued(name).machine))
+		for symbols := 40; symbols < 60; symbols++ {
+			wantEqual(t, fmt.Sprintf("%s after %d symbols", name, symbols), places(r, symbols), reachable(r.t, symbols))
+		}
+	}
+}
+
+// Every fault is the first symbol at which nothing continues from anywhere that the encoder could be at the fault
+// before; a symbol that continues from nowhere is taken as unread.
+func TestFaultsOfNoise(t *testing.T) {
+	for _, name := range Names() {
+		code := catalogued(name)
+		random := rand.New(rand.NewPCG(3, 4))
+		sym, err := code.Encode(source.Random().Bits(50*code.Bits(), 3))
+		if err != nil {
+			t.Fatal(err)
+		}
+		alphabet := append(code.Levels(), 0.25)
+		for i := 45; i < len(sym); i++ {
+			sym[i] = alphabet[random.IntN(len(alphabet))]
+		}
+		sym = sym[:min(len(sym), 200)]
+		_, faults, err := code.Decode(sym)
+		if err != nil {
+			t.Fatal(err)
+		}
+		trees := newTries(code.machine)
+		var want []int
+		step := func(now []int32, level float64, any bool) (next []int32) {
+			for _, node := range now {
+				for _, kid := range trees.children(node) {
+					if any || code.machine.levels[kid.symbol] == level {
+						for _, p := range trees.arrive(nil, kid.node) {
+							next = append(next, p.node)
+						}
+					}
+				}
+			}
+			slices.Sort(next)
+			return slices.Compact(next)
+		}
+		now := reachable(trees, code.Delay())
+		for i, level := range sym {
+			next := step(now, level, false)
+			if next == nil {
+				want = append(want, i)
+				now = reachable(trees, i)
+				for range code.Delay() {
+					now = step(now, 0, true)
+				}
+				if next = step(now, level, false); next == nil {
+					next = step(now, 0, true)
+				}
+			}
+			now = next
+		}
+		// The last symbols of noise may happen to be what a state owes at the end; HDB3 then has no fault there.
+		if !slices.Equal(faults, want[:min(len(want), len(faults))]) || len(want)-len(faults) > code.Delay() {
+			t.Errorf("%s: faults %v, want %v", code, faults, want)
+		}
+	}
 }
 
 // However often the automaton is made anew, the answer is the same.

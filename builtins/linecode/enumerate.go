@@ -179,8 +179,12 @@ func label(state any) string {
 	return s
 }
 
-// panicked returns what a function of the author panicked with as an error.
+// panicked returns what a function of the author panicked with as an error. The panics of an interpreted function carry
+// their value within a reflect.Value.
 func panicked(v any) error {
+	if r, ok := v.(reflect.Value); ok && r.IsValid() && r.CanInterface() {
+		v = r.Interface()
+	}
 	if err, ok := v.(error); ok {
 		return err
 	}

@@ -3,6 +3,7 @@ package linecode
 import (
 	"errors"
 	"math"
+	"reflect"
 	"strings"
 	"testing"
 )
@@ -65,9 +66,11 @@ func TestNewRefusesWhatIsNoMachine(t *testing.T) {
 
 func TestNewKeepsThePanicsError(t *testing.T) {
 	reason := errors.New("reason")
-	_, err := New(Spec{Bits: 1, Step: func(any, uint) (any, []float64) { panic(reason) }})
-	if !errors.Is(err, reason) {
-		t.Errorf("%v does not wrap the panic's error", err)
+	for _, v := range []any{reason, reflect.ValueOf(reason)} { // as compiled code panics, and as interpreted code does
+		_, err := New(Spec{Bits: 1, Step: func(any, uint) (any, []float64) { panic(v) }})
+		if !errors.Is(err, reason) {
+			t.Errorf("%v does not wrap the panic's error", err)
+		}
 	}
 }
 
