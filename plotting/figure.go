@@ -4,11 +4,15 @@ import (
 	"fmt"
 	"image/color"
 	"math"
+	"slices"
 	"sync"
 
 	"gonum.org/v1/plot"
+	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+
+	"linewright/plotting/internal/canvas"
 )
 
 const (
@@ -17,6 +21,8 @@ const (
 	DefaultWidth, DefaultHeight = 504 * vg.Length(1), 312 * vg.Length(1)
 
 	margin = 7 // points between the drawing and the figure's edge
+
+	terminalColumns, terminalRows = 72, 18 // of the picture of characters
 )
 
 // A Figure is a gonum plot that shows as a vector drawing, as a picture and as text.
@@ -66,13 +72,17 @@ func (f *Figure) SVG() (string, error) {
 		return "", err
 	}
 	// A point of the drawing is 4/3 CSS pixels exactly, so that SVG and PNG show at the same size.
-	c := newSVG(vg.Length(width)*0.75, vg.Length(height)*0.75)
+	c := canvas.NewSVG(vg.Length(width)*0.75, vg.Length(height)*0.75)
 	f.draw(c, *f.Plot)
 	title := f.Plot.Title.Text
 	if title == "" {
 		title = f.Plot.Y.Label.Text + " over " + f.Plot.X.Label.Text
 	}
-	return c.document(width, height, title, f.Alt)
+	svg, err := c.Document(width, height, title, f.Alt)
+	if err != nil {
+		return "", fmt.Errorf("plotting: %w", err)
+	}
+	return svg, nil
 }
 
 // PNG returns the figure as a PNG picture of twice its nominal size in pixels, for sharp screens. Shown, it wants the
@@ -81,19 +91,19 @@ func (f *Figure) PNG() (data []byte, width, height int, err error) {
 	if width, height, err = f.pixels(); err != nil {
 		return nil, 0, 0, err
 	}
-	c := newPNG(vg.Length(width)*0.75, vg.Length(height)*0.75, 2*96)
+	c := canvas.NewPNG(vg.Length(width)*0.75, vg.Length(height)*0.75, 2*96)
 	f.draw(c, *f.Plot)
-	data, err = c.encode()
+	data, err = c.Encode()
 	return data, width, height, err
 }
 
 // String returns the figure as a picture of characters for a terminal, 72 columns wide. Curves are drawn in braille
 // dots, 144 × 72 of them.
 func (f *Figure) String() string {
-	c := newTerminal(terminalColumns, terminalRows)
+	c := canvas.NewTerminal(terminalColumns, terminalRows)
 	p, header := forTerminal(*f.Plot)
 	f.draw(c, p)
-	return c.picture(header)
+	return c.Picture(header)
 }
 
 // bundle returns the figure in its three forms.
@@ -117,7 +127,7 @@ func (f *Figure) draw(c vg.CanvasSizer, p plot.Plot) {
 	f.mu.Lock()
 	defer f.mu.Unlock()
 	da := draw.New(c)
-	if _, ok := c.(*terminal); !ok {
+	if _, ok := c.(*canvas.Terminal); !ok {
 		// Always a background, over the margin too: on a dark page a transparent figure is dark on dark.
 		if p.BackgroundColor == nil {
 			p.BackgroundColor = color.White
@@ -131,4 +141,30 @@ func (f *Figure) draw(c vg.CanvasSizer, p plot.Plot) {
 		f.fit(&p, da)
 	}
 	p.Draw(da)
+}
+
+// forTerminal returns p with its texts measured in characters, and the label of the left axis, which stands above the
+// picture.
+func forTerminal(p plot.Plot) (plot.Plot, string) {
+	h := canvas.Characters{Handler: p.TextHandler}
+	p.TextHandler = h
+	for _, s := range []*text.Style{
+		&p.Title.TextStyle, &p.Legend.TextStyle, &p.X.Label.TextStyle, &p.X.Tick.Label, &p.Y.Label.TextStyle, &p.Y.Tick.Label,
+	} {
+		s.Handler = h
+	}
+	p.Title.Padding, p.X.Label.Padding, p.Y.Label.Padding = 0, 0, 0
+	p.X.Tick.Length, p.Y.Tick.Length = canvas.CellHeight/4, 0
+	p.X.Tick.Marker = labelled{p.X.Tick.Marker}
+	p.X.Padding, p.Y.Padding = canvas.CellHeight, canvas.CellWidth
+	label := p.Y.Label.Text
+	p.Y.Label.Text = ""
+	return p, label
+}
+
+// labelled leaves out the unlabelled ticks, for which a row of characters has no room.
+type labelled struct{ plot.Ticker }
+
+func (l labelled) Ticks(lo, hi float64) []plot.Tick {
+	return slices.DeleteFunc(slices.Clone(l.Ticker.Ticks(lo, hi)), plot.Tick.IsMinor)
 }

@@ -10,6 +10,8 @@ import (
 	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+
+	"linewright/plotting/internal/canvas"
 )
 
 const (
@@ -77,9 +79,9 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 	}
 	taken := n.avoid(c, p)
 	least := vg.Length(3 * nameGap) // of room: the name must be nearer to its own curve than to any other
-	_, inCells := p.TextHandler.(characters)
+	_, inCells := p.TextHandler.(canvas.Characters)
 	if inCells {
-		least = 2 * cellHeight
+		least = 2 * canvas.CellHeight
 	}
 	var out []vg.Point
 	for i := range n.curves {
@@ -100,9 +102,9 @@ func (n *names) place(p *plot.Plot, c draw.Canvas) []vg.Point {
 					continue
 				}
 				if inCells { // whole rows, that next to the curve
-					y = vg.Length(math.Ceil(float64(high/cellHeight))) * cellHeight
+					y = vg.Length(math.Ceil(float64(high/canvas.CellHeight))) * canvas.CellHeight
 					if side == 1 {
-						y = vg.Length(math.Floor(float64(low/cellHeight))-1) * cellHeight
+						y = vg.Length(math.Floor(float64(low/canvas.CellHeight))-1) * canvas.CellHeight
 					}
 				}
 				box := vg.Rectangle{Min: vg.Point{X: x, Y: y}, Max: vg.Point{X: x + width, Y: y + height}}

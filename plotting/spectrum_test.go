@@ -7,6 +7,7 @@ import (
 	"testing"
 
 	"linewright/builtins/spectrum"
+	"linewright/plotting/internal/canvas"
 )
 
 // flat is a density of 1 V²/Hz with the given lines.
@@ -100,9 +101,10 @@ func TestSpectrumTonesAlone(t *testing.T) {
 func TestTonesSideBySide(t *testing.T) {
 	at := spectrum.Line{Freq: 1e6, Power: 1}
 	s := newSpectrum([]density{flat("a", 0, at), flat("b", 0, at), flat("c", 0, at, spectrum.Line{Freq: 2e6, Power: 1})}, false, 3e6)
-	r := &recorder{svgCanvas: newSVG(DefaultWidth, DefaultHeight)}
-	s.draw(r, *s.Plot)
-	c := s.Plot.DataCanvas(canvasOf(r))
+	if _, err := s.SVG(); err != nil { // decides where the names go, which moves the axes
+		t.Fatal(err)
+	}
+	c := s.Plot.DataCanvas(canvasOf(canvas.NewSVG(DefaultWidth, DefaultHeight)))
 	x, _ := s.Plot.Transforms(&c)
 	got := s.stems.stems(c, s.Plot)
 	if len(got) != 4 {

@@ -2,12 +2,13 @@ package plotting
 
 import (
 	"image/color"
-	"math"
 
 	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/font"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+
+	"linewright/plotting/internal/canvas"
 )
 
 // The look that all figures share.
@@ -75,23 +76,10 @@ func (diamond) DrawGlyph(c *draw.Canvas, sty draw.GlyphStyle, pt vg.Point) {
 // legible darkens the colour of a series until text in it stands out from white as the Web Content Accessibility
 // Guidelines 2.1 ask of text (contrast 4.5, success criterion 1.4.3).
 func legible(c color.NRGBA) color.NRGBA {
-	for 1.05/(luminance(c)+0.05) < 4.5 {
+	for 1.05/(canvas.Luminance(c)+0.05) < 4.5 {
 		c.R, c.G, c.B = uint8(float64(c.R)*0.95), uint8(float64(c.G)*0.95), uint8(float64(c.B)*0.95)
 	}
 	return c
-}
-
-// luminance returns the relative luminance of a colour, 0 for black to 1 for white, as the same guidelines define it.
-func luminance(clr color.Color) float64 {
-	c := color.NRGBAModel.Convert(clr).(color.NRGBA)
-	linear := func(v uint8) float64 {
-		if s := float64(v) / 255; s > 0.04045 {
-			return math.Pow((s+0.055)/1.055, 2.4)
-		} else {
-			return s / 12.92
-		}
-	}
-	return 0.2126*linear(c.R) + 0.7152*linear(c.G) + 0.0722*linear(c.B)
 }
 
 // newPlot returns an empty plot in the style of the figures.

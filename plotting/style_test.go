@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"image/color"
 	"testing"
+
+	"linewright/plotting/internal/canvas"
 )
 
 // TestSeriesDiffer: no two series of a figure look alike, and up to the number of colours both colour and dash differ.
@@ -33,7 +35,7 @@ func TestSeriesDiffer(t *testing.T) {
 // 2: the palette's lighter colours fall short of the 3 that 1.4.11 asks of graphics, which is what the dashes and the
 // names beside the curves are for.
 func TestContrast(t *testing.T) {
-	onWhite := func(c color.Color) float64 { return 1.05 / (luminance(c) + 0.05) }
+	onWhite := func(c color.Color) float64 { return 1.05 / (canvas.Luminance(c) + 0.05) }
 	// Black on white is 21 by the guidelines' definition, and grey #767676 is known as the lightest that has 4.5.
 	if got := onWhite(color.Black); got != 21 {
 		t.Errorf("black on white is %g, want 21", got)

@@ -9,6 +9,8 @@ import (
 	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
+
+	"linewright/plotting/internal/canvas"
 )
 
 const (
@@ -70,7 +72,7 @@ func highest(stems []stem) []stem {
 	var out []stem
 	for _, s := range stems {
 		n := len(out)
-		if n == 0 || math.Floor(float64(out[n-1].top.X/pixel)) != math.Floor(float64(s.top.X/pixel)) {
+		if n == 0 || math.Floor(float64(out[n-1].top.X/canvas.Pixel)) != math.Floor(float64(s.top.X/canvas.Pixel)) {
 			out = append(out, s)
 		} else if s.top.Y > out[n-1].top.Y {
 			out[n-1] = s
@@ -134,8 +136,8 @@ func weight(stems []stem) (line, mark vg.Length) {
 	slices.Sort(at)
 	line, mark = 1.1, markRadius
 	for i := range len(at) - 1 {
-		if gap := at[i+1] - at[i]; gap > pixel/2 {
-			line, mark = min(line, max(pixel/2, 0.35*gap)), min(mark, max(pixel/2, 0.7*gap))
+		if gap := at[i+1] - at[i]; gap > canvas.Pixel/2 {
+			line, mark = min(line, max(canvas.Pixel/2, 0.35*gap)), min(mark, max(canvas.Pixel/2, 0.7*gap))
 		}
 	}
 	return line, mark

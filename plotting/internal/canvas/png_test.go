@@ -1,4 +1,4 @@
-package plotting
+package canvas
 
 import (
 	"image"
@@ -23,7 +23,7 @@ func TestPieces(t *testing.T) {
 	}
 	for name, dash := range map[string][]vg.Length{"solid": nil, "dashed": {7, 5}, "dash-dot": {8, 3, 2, 3}} {
 		t.Run(name, func(t *testing.T) {
-			pieces := newPNG(420, 200, 96)
+			pieces := NewPNG(420, 200, 96)
 			whole := vgimg.NewWith(vgimg.UseWH(420, 200), vgimg.UseDPI(96))
 			for _, c := range []vg.Canvas{pieces, whole} {
 				c.SetLineDash(dash, 2)

@@ -1,4 +1,4 @@
-package plotting
+package canvas
 
 import (
 	"bytes"
@@ -13,26 +13,28 @@ import (
 // pieceLength is how many segments of a line the raster canvas draws at once.
 const pieceLength = 48
 
-// A pngCanvas is gonum's raster canvas, made fast for long lines: the time that its rasteriser takes for a line grows
+// PNG is gonum's raster canvas, made fast for long lines: the time that its rasteriser takes for a line grows
 // faster than the square of its length where the line goes to and fro, so lines are drawn in pieces. The pieces
 // overlap by one segment, which leaves no gap at the joints, and carry the dash pattern on.
-type pngCanvas struct {
+type PNG struct {
 	*vgimg.Canvas
 	dashes []vg.Length
 	offset vg.Length
 }
 
-// newPNG returns a canvas of w by h at so many pixels an inch.
-func newPNG(w, h vg.Length, dpi int) *pngCanvas {
-	return &pngCanvas{Canvas: vgimg.NewWith(vgimg.UseWH(w, h), vgimg.UseDPI(dpi))}
+// NewPNG returns a canvas of w by h at so many pixels an inch.
+func NewPNG(w, h vg.Length, dpi int) *PNG {
+	return &PNG{Canvas: vgimg.NewWith(vgimg.UseWH(w, h), vgimg.UseDPI(dpi))}
 }
 
-func (c *pngCanvas) SetLineDash(ds []vg.Length, offset vg.Length) {
+// SetLineDash sets the dash pattern of lines.
+func (c *PNG) SetLineDash(ds []vg.Length, offset vg.Length) {
 	c.dashes, c.offset = slices.Clone(ds), offset
 	c.Canvas.SetLineDash(ds, offset)
 }
 
-func (c *pngCanvas) Stroke(p vg.Path) {
+// Stroke draws a line along a path.
+func (c *PNG) Stroke(p vg.Path) {
 	if p = thinPath(p); len(p) <= pieceLength {
 		c.Canvas.Stroke(p)
 		return
@@ -80,7 +82,8 @@ func distance(a, b vg.Point) vg.Length {
 	return vg.Length(math.Hypot(float64(b.X-a.X), float64(b.Y-a.Y)))
 }
 
-func (c *pngCanvas) encode() ([]byte, error) {
+// Encode returns the drawing as a PNG file.
+func (c *PNG) Encode() ([]byte, error) {
 	var buf bytes.Buffer
 	err := png.Encode(&buf, c.Image())
 	return buf.Bytes(), err
