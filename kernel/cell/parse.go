@@ -25,6 +25,7 @@ type decl struct {
 	text               string
 	node               ast.Decl
 	signature          string // of a method
+	doc                string // the comment above it
 }
 
 // yaegi scopes imports by the base name of the file, so all cells have the same one.
@@ -49,6 +50,7 @@ func parse(fset *token.FileSet, n int, text string) (*source, error) {
 		blank(statements[c.start:c.end])
 		line, column := place(text, c.start)
 		d := &decl{cell: n, line: line, column: column, text: strings.TrimRight(text[c.start:c.end], " \t\r\n;")}
+		d.doc = above(text[:c.start])
 		if err := d.parse(fset); err != nil {
 			errs = add(errs, err)
 			continue
@@ -88,6 +90,21 @@ func (d *decl) parse(fset *token.FileSet) error {
 		d.signature = signature(f)
 	}
 	return nil
+}
+
+// above returns the text of the line comments that stand directly before a declaration.
+func above(text string) string {
+	lines := strings.Split(text, "\n")
+	var doc []string
+	for i := len(lines) - 2; i >= 0; i-- {
+		line, ok := strings.CutPrefix(strings.TrimSpace(lines[i]), "//")
+		if !ok {
+			break
+		}
+		doc = append(doc, strings.TrimPrefix(line, " "))
+	}
+	slices.Reverse(doc)
+	return strings.Join(doc, "\n")
 }
 
 func add(list scanner.ErrorList, err error) scanner.ErrorList {
