@@ -11,7 +11,8 @@ import (
 type definition struct {
 	name string
 	// reference is the standard or paper that defines the code, and the convention taken where that leaves one open.
-	// "From memory" marks a source that was not at hand when the definition was written.
+	// "From memory" marks a source that was not at hand when the definition was written, "as quoted elsewhere" one that
+	// was seen second hand.
 	reference string
 	spec      func() Spec // without the name
 }
@@ -49,21 +50,21 @@ var definitions = []definition{
 	{"Manchester 802.3", "IEEE 802.3 clause 7 (from memory): a 1 is -1 then +1, a 0 is +1 then -1, half a bit each; biphase-L of IRIG 106 has it the other way round", func() Spec {
 		return memoryless(1, []float64{1, -1}, []float64{-1, 1})
 	}},
-	{"biphase-M", "IRIG 106 chapter 4 (from memory): a change of level at the start of every bit, a 1 changes in its middle too; the line starts at -1", func() Spec {
+	{"biphase-M", "the trade's FM1: a change of level at the start of every bit, a 1 changes in its middle too; the line starts at -1. Editions of IRIG 106 differ by half a bit in what they call bi-phase-M (note 2 of figure 4-1 in 106-99)", func() Spec {
 		return biphaseMarked(1)
 	}},
-	{"biphase-S", "IRIG 106 chapter 4 (from memory): a change of level at the start of every bit, a 0 changes in its middle too; the line starts at -1", func() Spec {
+	{"biphase-S", "the trade's FM0: a change of level at the start of every bit, a 0 changes in its middle too; the line starts at -1. Editions of IRIG 106 differ by half a bit in what they call bi-phase-S (note 2 of figure 4-1 in 106-99)", func() Spec {
 		return biphaseMarked(0)
 	}},
 	{"delay modulation", "M. Hecht and A. Guida, Proc. IEEE 57 (1969) 1314 (from memory): a 1 changes level in its middle, a 0 after a 0 at its start; the line starts at -1, after a 1", delayModulation},
-	{"CMI", "ITU-T G.703 (from memory): a 0 is -1 then +1, half a bit each; 1s are -1 and +1 by turns for the whole bit, the first -1", codedMarkInversion},
-	{"HDB3", "ITU-T G.703 Annex A (from memory): AMI with four 0s as 000V or B00V, so that the violations V alternate; the first mark is +1, and no mark before the first violation counts as an even number, B00V", hdb3},
+	{"CMI", "ITU-T G.703 Annex A (as quoted elsewhere): a 0 is -1 then +1, half a bit each; 1s are -1 and +1 by turns for the whole bit, the first -1", codedMarkInversion},
+	{"HDB3", "ITU-T G.703 Annex A (as quoted elsewhere): AMI with four 0s as 000V or B00V, so that the violations V alternate; the first mark is +1, and no mark before the first violation counts as an even number, B00V", hdb3},
 	{"MLT-3", "ANSI X3.263 and IEEE 802.3 clause 25 (from memory): a 1 goes on to the next of 0, +1, 0, -1, a 0 stays; the line starts at 0 before +1", multiLevelTransmit},
-	{"2B1Q", "ANSI T1.601 (from memory): 10 is +3, 11 is +1, 01 is -1, 00 is -3", func() Spec {
+	{"2B1Q", "ANSI T1.601 (as quoted elsewhere): 10 is +3, 11 is +1, 01 is -1, 00 is -3", func() Spec {
 		return memoryless(2, []float64{-3}, []float64{-1}, []float64{3}, []float64{1})
 	}},
-	{"4B5B", "ANSI X3.166 and IEEE 802.3 clause 24 (from memory): data symbols 0 to F, sent as NRZ-M; the line starts at -1", code4B5B},
-	{"8b/10b", "A. X. Widmer and P. A. Franaszek, IBM J. Res. Dev. 27 (1983) 440, and IEEE 802.3 clause 36 (from memory): data characters; the octet is the word HGFEDCBA, the symbols leave as abcdei fghj, the running disparity starts negative", code8b10b},
+	{"4B5B", "ANSI X3.166 and IEEE 802.3 clause 24 (code groups as a transceiver's data sheet prints them): data symbols 0 to F, sent as NRZ-M; the line starts at -1", code4B5B},
+	{"8b/10b", "A. X. Widmer and P. A. Franaszek, IBM J. Res. Dev. 27 (1983) 440, and IEEE 802.3 clause 36 (tables from memory, confirmed by a second copy): data characters; the octet is the word HGFEDCBA, the symbols leave as abcdei fghj, the running disparity starts negative", code8b10b},
 	{"bit stuffing 5", "common practice: polar NRZ with a 0 inserted after every five 1s", func() Spec {
 		return stuffing(5, false)
 	}},
@@ -220,7 +221,8 @@ func BiphaseL() *Code { return catalogued("biphase-L") }
 // Manchester8023 returns biphase-L in the convention of IEEE 802.3: a 1 is low then high.
 func Manchester8023() *Code { return catalogued("Manchester 802.3") }
 
-// BiphaseM returns biphase-M: the level changes at the start of every bit, and in the middle of a 1.
+// BiphaseM returns biphase-M: the level changes at the start of every bit, and in the middle of a 1. Some editions of
+// IRIG 106 have the sure change in the middle instead, which is the same half a bit later.
 func BiphaseM() *Code { return catalogued("biphase-M") }
 
 // BiphaseS returns biphase-S: the level changes at the start of every bit, and in the middle of a 0.

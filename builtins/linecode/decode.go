@@ -16,10 +16,12 @@ import (
 // is no level is a fault.
 //
 // The bits are all that were encoded if the symbols end where Encode ends them. If they end earlier, the bits are those
-// in which all data agree that give these symbols, which is short by no more than the delay of [Code.Decodable]. At a
-// fault the bits go on in place: those of the symbols before the fault are taken from the first data in the order of the
-// code's states that give these symbols, and decoding resumes with the code in any state that it can be in after so many
-// symbols. So a code of fixed rate returns one bit for each that was sent, whatever the faults, unless symbols were lost.
+// in which all data agree that give these symbols, which is short by no more than the delay of [Code.Decodable].
+//
+// At a fault the bits go on in place. Those that belong before it are of data that give the symbols before it, of the
+// kind that most such data share; those after it are of data that give the symbols from it on, from any state that the
+// code can be in after so many symbols, if possible the same. So a code of fixed rate answers with as many bits as were
+// sent, whatever the faults, as long as no symbol is lost or gained.
 //
 // Decode refuses with an error a code that is not decodable, naming two data sequences with the same symbols, and
 // symbols that are NaN.
@@ -27,7 +29,7 @@ func (c *Code) Decode(symbols []float64) (bits []byte, faults []int, err error) 
 	ctx := page.Context()
 	for i, a := range symbols {
 		if math.IsNaN(a) {
-			return nil, nil, fmt.Errorf("linecode: Decode got NaN at position %d; symbols are levels of %s: %v", i, c.name, c.machine.levels)
+			return nil, nil, fmt.Errorf("linecode: Decode got NaN at position %d; symbols are the levels of %s, as Levels lists them", i, c.name)
 		}
 	}
 	verdict, err := c.machine.decide(ctx, c.name)
@@ -163,15 +165,12 @@ func (d *decoding) step(symbol int32) (bool, error) {
 // place from the encoder's symbol i on, and the delay line is unknown again.
 func (d *decoding) fault(i int, symbol int32) error {
 	d.faults = append(d.faults, i)
-	now := survivor{k: len(d.history)}
-	for now.k > i-d.begin {
-		now, _ = d.back(now)
-	}
+	now := d.likeliest(i - d.begin)
 	d.bits = append(d.bits, d.data(now)...)
 	if d.resume == nil {
 		d.resume = newResumption(d.t)
 	}
-	d.start(i, first(d.resume.places(i), d.nodeOf(now)))
+	d.start(i, ahead(d.resume.places(i), d.nodeOf(now)))
 	if err := d.skip(d.m.delay); err != nil {
 		return err
 	}
@@ -182,8 +181,25 @@ func (d *decoding) fault(i int, symbol int32) error {
 	return d.skip(1) // no state continues with it: take it as unread
 }
 
-// first returns the places with the one at a node, if it is among them, before the others.
-func first(places []place, node int32) []place {
+// likeliest returns the place after k symbols of the segment through which most survivors have come, the first of several.
+func (d *decoding) likeliest(k int) survivor {
+	votes := make(map[int32]int)
+	best := survivor{k: k, at: -1}
+	for at := range d.a.sets[d.set] {
+		s := survivor{k: len(d.history), at: int32(at)}
+		for s.k > k {
+			s, _ = d.back(s)
+		}
+		votes[s.at]++
+		if best.at < 0 || votes[s.at] > votes[best.at] || votes[s.at] == votes[best.at] && s.at < best.at {
+			best = s
+		}
+	}
+	return best
+}
+
+// ahead returns the places with the one at a node, if it is among them, before the others.
+func ahead(places []place, node int32) []place {
 	i := slices.IndexFunc(places, func(p place) bool { return p.node == node })
 	if i <= 0 {
 		return places

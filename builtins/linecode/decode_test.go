@@ -54,7 +54,7 @@ func TestDecodeExamples(t *testing.T) {
 
 func TestDecodeRefuses(t *testing.T) {
 	_, _, err := AMI().Decode([]float64{1, math.NaN()})
-	if want := "linecode: Decode got NaN at position 1; symbols are levels of AMI: [-1 0 1]"; err == nil || err.Error() != want {
+	if want := "linecode: Decode got NaN at position 1; symbols are the levels of AMI, as Levels lists them"; err == nil || err.Error() != want {
 		t.Errorf("got  %v\nwant %s", err, want)
 	}
 	lossy := must(t, Spec{Name: "lossy", Bits: 2, Step: func(_ any, w uint) (any, []float64) { return nil, []float64{float64(w & 2)} }})

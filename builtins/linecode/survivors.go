@@ -25,7 +25,7 @@ type turn struct{ set, symbol int32 }
 type move struct {
 	to     int32
 	from   []int32 // per place of the new set, its place in the old one
-	words  []int32 // likewise the words read: noWord, a word, or chain(i) for chains[i]
+	words  []int32 // likewise the words read: noWord, a word, or chained(i) for chains[i]
 	merged bool    // two ways led to one place
 }
 
@@ -35,8 +35,8 @@ const (
 	noWord   = -1
 )
 
-// chain is how a move refers to chains[i].
-func chain(i int) int32 { return int32(-2 - i) }
+// chained is how a move refers to chains[i].
+func chained(i int) int32 { return int32(-2 - i) }
 
 func newSurvivors(t *tries) *survivors {
 	return &survivors{t: t, numbers: make(map[string]int32), known: make(map[turn]int32)}
@@ -108,7 +108,7 @@ func (a *survivors) refer(words []uint32) int32 {
 		return int32(words[0])
 	}
 	a.chains = append(a.chains, words)
-	return chain(len(a.chains) - 1)
+	return chained(len(a.chains) - 1)
 }
 
 // appendReversed appends the words that a move refers to, the last first.
