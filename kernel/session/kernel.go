@@ -153,40 +153,41 @@ func (k *kernel) listen(life context.Context, ch wire.Channel) {
 
 // answer answers any request but that to execute.
 func (k *kernel) answer(ch wire.Channel, m *wire.Message) {
-	handle, known := requests[m.Type]
 	if m.Type == "interrupt_request" {
 		k.interrupt() // before anything is sent, which may have to wait for slow readers
 	}
 	k.publish(m, "status", status{"busy"})
-	defer k.publish(m, "status", status{"idle"})
-	name, isRequest := strings.CutSuffix(m.Type, "_request")
-	if !known {
-		k.log.Warn("unknown message", "channel", ch.String(), "type", m.Type)
-		handle = func(*kernel, *wire.Message) (any, error) {
-			return nil, fmt.Errorf("this kernel has no answer to %s on %s", m.Type, ch)
-		}
-	}
-	content, err := k.guarded(handle, m)
-	if !isRequest {
-		return // comm messages have no reply
-	}
+	content, err := k.handle(ch, m)
 	if err != nil {
 		content = failure("bad request", err)
 	}
-	k.reply(ch, m, name+"_reply", nil, content)
-	if m.Type == "shutdown_request" {
+	if name, ok := strings.CutSuffix(m.Type, "_request"); ok { // comm messages have no reply
+		k.reply(ch, m, name+"_reply", nil, content)
+	}
+	leaving := m.Type == "shutdown_request" && err == nil
+	if leaving {
 		k.publish(m, "shutdown_reply", content)
+	}
+	k.publish(m, "status", status{"idle"})
+	if leaving {
+		k.end(nil)
 	}
 }
 
-// guarded turns a panic in a handler into an error: a request that we get wrong must not end the session.
-func (k *kernel) guarded(handle handler, m *wire.Message) (content any, err error) {
+// handle does the work of a request. A request that the kernel gets wrong must not end the session, so a panic becomes
+// an error.
+func (k *kernel) handle(ch wire.Channel, m *wire.Message) (content any, err error) {
 	defer func() {
 		if v := recover(); v != nil {
 			k.log.Error("panic in the kernel", "request", m.Type, "panic", v, "stack", string(debug.Stack()))
 			err = fmt.Errorf("the kernel failed on %s: %v", m.Type, v)
 		}
 	}()
+	handle, ok := requests[m.Type]
+	if !ok {
+		k.log.Warn("unknown message", "channel", ch.String(), "type", m.Type)
+		return nil, fmt.Errorf("this kernel has no answer to %s on %s", m.Type, ch)
+	}
 	return handle(k, m)
 }
 

@@ -4,7 +4,6 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
-	"io"
 	"log/slog"
 	"net"
 	"strings"
@@ -133,5 +132,3 @@ func TestRequestAndReply(t *testing.T) {
 		})
 	}
 }
-
-var _ = io.Discard
