@@ -34,7 +34,7 @@ func collect(t *testing.T, messages ...*wire.Message) []*Output {
 func collected(t *testing.T) []*Output {
 	return collect(t,
 		message("stream", `{"name": "stdout", "text": "a\nb\n"}`),
-		message("display_data", `{"data": {"text/plain": "p", "image/png": "iVBORw0KGgo=", "image/svg+xml": "<svg>\n</svg>\n", "application/x+json": {"k": [1.50, "l\nm"]}}, "metadata": {"image/png": {"width": 320}}, "transient": {"display_id": "d"}}`),
+		message("display_data", `{"data": {"text/plain": "p", "image/png": "iVBORw0KGgo=", "image/svg+xml": "<svg>\n</svg>\n", "application/x+json": {"k": [1.5, "l\nm"]}}, "metadata": {"image/png": {"width": 320}}, "transient": {"display_id": "d"}}`),
 		message("execute_result", `{"data": {"text/plain": "3\n4"}, "metadata": {}, "execution_count": 7}`),
 		message("error", `{"ename": "panic", "evalue": "bad", "traceback": ["panic: bad", "cell[1]:1:2"]}`),
 	)

@@ -13,21 +13,14 @@ import (
 	"linewright/kernel/wire"
 )
 
-const (
-	// interruptLimit is the time that an interrupted cell has to stop before its kernel is ended.
-	interruptLimit = 5 * time.Second
-	// idleLimit is the longest silence between the reply to a cell and the word that all its output is out.
-	idleLimit = 10 * time.Second
-	// lastWords is the time in which the last output of a kernel that has died comes in.
-	lastWords = time.Second
-)
-
 // Conditions are what cells are executed under.
 type Conditions struct {
 	Kernel     []string          // command line of the kernel; {connection_file} stands for the connection file's path
 	Folder     string            // the kernel's working folder; empty means that of this process
 	Parameters map[string]string // values of page parameters, as text
 	Progress   Progress          // is told of every cell; nil means nobody
+
+	limits *limits // nil means the usual ones; tests have no time
 }
 
 // Progress is told how the execution goes on. Cells are counted from 1; those without content are neither executed nor
@@ -82,7 +75,11 @@ func (n *Notebook) Execute(ctx context.Context, with Conditions) (asked []string
 	for _, c := range n.Cells {
 		c.Outputs, c.Count = nil, 0
 	}
-	p, err := start(ctx, with.Kernel, with.Folder, with.Parameters)
+	l := usualLimits
+	if with.limits != nil {
+		l = *with.limits
+	}
+	p, err := start(ctx, l, with.Kernel, with.Folder, with.Parameters)
 	if err != nil {
 		if ctx.Err() != nil {
 			err = fmt.Errorf("%w before the first cell", ErrInterrupted)
@@ -169,19 +166,20 @@ func (x *execution) cell(ctx context.Context, number int, c *Cell) error {
 // wait takes what comes in until the request is answered and all output is there. When ctx ends, the cell is
 // interrupted; the answer is waited for all the same, but not long.
 func (x *execution) wait(ctx context.Context, request string) (*reply, error) {
+	p := x.process
 	var (
 		answer      *reply
 		idle        bool
-		ended       = x.process.ended
+		ended       = p.ended
 		interrupted = ctx.Done()
 		limit       <-chan time.Time
 		late        error // what it means when limit is over
 	)
 	for answer == nil || !idle {
 		select {
-		case e, ok := <-x.process.events:
+		case e, ok := <-p.events:
 			if !ok {
-				return nil, x.process.death()
+				return nil, p.death()
 			}
 			if e.channel == wire.Shell {
 				if e.message.ParentID != request {
@@ -198,17 +196,17 @@ func (x *execution) wait(ctx context.Context, request string) (*reply, error) {
 				idle = idle || e.message.ParentID == request && isIdle(e)
 			}
 			if answer != nil && ended != nil {
-				limit = time.After(idleLimit)
-				late = fmt.Errorf("the kernel answered and then sent nothing for %v, also not that it is idle", idleLimit)
+				limit = time.After(p.limits.idle)
+				late = fmt.Errorf("the kernel answered and then sent nothing for %v, also not that it is idle", p.limits.idle)
 			}
 		case <-ended: // what it sent before is still coming in
 			ended = nil
-			limit, late = time.After(lastWords), x.process.death()
+			limit, late = time.After(p.limits.lastWords), p.death()
 		case <-interrupted:
 			interrupted = nil
-			x.process.interrupt()
-			limit = time.After(interruptLimit)
-			late = fmt.Errorf("%w; the kernel did not stop within %v and was ended", ErrInterrupted, interruptLimit)
+			p.interrupt()
+			limit = time.After(p.limits.interrupt)
+			late = fmt.Errorf("%w; the kernel did not stop within %v and was ended", ErrInterrupted, p.limits.interrupt)
 		case <-limit:
 			return nil, late
 		}

@@ -212,7 +212,7 @@ func TestJupyterReadsAndKeepsWhatIsWritten(t *testing.T) {
 	path := notebookFile(t, string(encoded(t, n)))
 	out, err := exec.Command(python, "-W", "error", "-c", `
 import json, sys, nbformat
-nbformat.validate(json.load(open(sys.argv[1])))
+with open(sys.argv[1]) as f: nbformat.validate(json.load(f))
 sys.stdout.buffer.write((nbformat.writes(nbformat.read(sys.argv[1], as_version=4)) + "\n").encode())`, path).CombinedOutput()
 	if err != nil {
 		t.Fatalf("%v\n%s", err, out)

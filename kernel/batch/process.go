@@ -19,14 +19,28 @@ import (
 	"linewright/kernel/wire"
 )
 
-const (
-	startLimit    = 30 * time.Second       // for a kernel to answer its first request
-	shutdownLimit = 3 * time.Second        // for a kernel to end when it is told to
-	retry         = 500 * time.Millisecond // before the first request is repeated
-)
+// limits are how long is waited for a kernel.
+type limits struct {
+	start     time.Duration // to answer its first request
+	repeat    time.Duration // to answer it before it is sent again
+	shutdown  time.Duration // to end when it is told to
+	interrupt time.Duration // to stop a cell that is interrupted, before the kernel is ended
+	idle      time.Duration // between the reply to a cell, or its output, and the word that all output is out
+	lastWords time.Duration // for the last output of a kernel that has died to come in
+}
+
+var usualLimits = limits{
+	start:     30 * time.Second,
+	repeat:    500 * time.Millisecond,
+	shutdown:  3 * time.Second,
+	interrupt: 5 * time.Second,
+	idle:      10 * time.Second,
+	lastWords: time.Second,
+}
 
 // process is a kernel that this program has started.
 type process struct {
+	limits limits
 	cmd    *exec.Cmd
 	client *wire.Client
 	folder string // holds the connection file and, where there are any, the sockets
@@ -56,8 +70,8 @@ const parentVariable = "JPY_PARENT_PID"
 
 // start starts the kernel whose command line is argv, with {connection_file} for its connection file, in the working
 // folder, and waits until it answers.
-func start(ctx context.Context, argv []string, folder string, parameters map[string]string) (_ *process, err error) {
-	p := &process{ended: make(chan struct{}), events: make(chan event), stop: make(chan struct{})}
+func start(ctx context.Context, l limits, argv []string, folder string, parameters map[string]string) (_ *process, err error) {
+	p := &process{limits: l, ended: make(chan struct{}), events: make(chan event), stop: make(chan struct{})}
 	defer func() {
 		if err != nil {
 			p.close()
@@ -137,7 +151,7 @@ func newConnection(folder string) (wire.Connection, error) {
 // connect connects to the kernel and asks for its kernel_info until the answer is heard on both channels: only then is
 // it sure that no broadcast is lost.
 func (p *process) connect(ctx context.Context, c wire.Connection) error {
-	ctx, cancel := context.WithTimeoutCause(ctx, startLimit, fmt.Errorf("the kernel did not answer within %v", startLimit))
+	ctx, cancel := context.WithTimeoutCause(ctx, p.limits.start, fmt.Errorf("the kernel did not answer within %v", p.limits.start))
 	defer cancel()
 	dialling, stopDialling := context.WithCancel(ctx)
 	defer stopDialling()
@@ -173,7 +187,7 @@ func (p *process) connect(ctx context.Context, c wire.Connection) error {
 
 // settle waits a moment for the reply and the idle state that answer a request.
 func (p *process) settle(ctx context.Context, id string) (done bool, err error) {
-	again := time.After(retry)
+	again := time.After(p.limits.repeat)
 	var replied, idle bool
 	for !replied || !idle {
 		select {
@@ -261,7 +275,7 @@ func (p *process) over() bool {
 func (p *process) death() error {
 	select {
 	case <-p.ended:
-	case <-time.After(shutdownLimit):
+	case <-time.After(p.limits.shutdown):
 		kill(p.cmd)
 		<-p.ended
 		return errors.New("the kernel closed its connections and was ended")
@@ -285,21 +299,39 @@ const crashFile = "connection.linewright-crash"
 
 // reason returns the line that says best why the process has ended, or "".
 func (p *process) reason() string {
-	if crash, err := os.ReadFile(filepath.Join(p.folder, crashFile)); err == nil {
-		if first, _, _ := strings.Cut(strings.TrimSpace(string(crash)), "\n"); first != "" {
-			return first
-		}
+	crash, err := os.ReadFile(filepath.Join(p.folder, crashFile))
+	if err != nil {
+		return p.log.last()
 	}
-	return p.log.last()
+	return crashReason(strings.TrimSpace(string(crash)))
 }
 
-// close ends the kernel, at the latest after shutdownLimit, and removes its traces.
+// crashReason returns what a Go program's crash report says first. Of a fatal error of the runtime it has the stack
+// only: then that is the function which failed.
+func crashReason(report string) string {
+	first, stack, _ := strings.Cut(report, "\n")
+	if !strings.HasPrefix(first, "goroutine ") {
+		return first
+	}
+	for l := range strings.Lines(stack) {
+		name, _, isCall := strings.Cut(l, "(")
+		if strings.HasPrefix(l, "\t") || strings.HasSuffix(name, ".throw") || strings.HasSuffix(name, ".fatal") {
+			continue
+		}
+		if isCall {
+			return "fatal error of the Go runtime in " + strings.TrimSpace(l[:strings.LastIndexByte(l, '(')])
+		}
+	}
+	return "fatal error of the Go runtime"
+}
+
+// close ends the kernel, when it does not end by itself in time, and removes its traces.
 func (p *process) close() {
 	if p.client != nil && !p.over() {
 		p.client.Send(wire.Control, "shutdown_request", nil, map[string]bool{"restart": false})
 		select {
 		case <-p.ended:
-		case <-time.After(shutdownLimit):
+		case <-time.After(p.limits.shutdown):
 		}
 	}
 	if p.cmd != nil {

@@ -5,6 +5,7 @@ import (
 	"encoding/base64"
 	"encoding/json"
 	"fmt"
+	"html"
 	"html/template"
 	"io"
 	"maps"
@@ -52,12 +53,9 @@ type cellView struct {
 }
 
 type outputView struct {
-	Class string // "stream", "stderr", "error", "html" or "figure"
-	Text  string
-	HTML  template.HTML
-	URL   template.URL // of a figure
-	Alt   string
-	Width string // of a figure; empty means its own
+	Class string        // "stream", "stderr", "error", "html" or "figure"
+	Text  string        // of the first three
+	HTML  template.HTML // of the last two
 }
 
 // contentsFrom is the number of headings from which a report has a table of contents.
@@ -149,15 +147,10 @@ func (p *prose) output(o *Output, alt string) (outputView, bool) {
 		return outputView{Class: "html", HTML: template.HTML(p.html(s, nil))}, true
 	}
 	for _, mime := range []string{"image/svg+xml", "image/png", "image/jpeg", "image/gif", "image/webp"} {
-		s, ok := o.text(mime)
-		if !ok {
-			continue
+		if picture, ok := o.picture(mime); ok {
+			img := fmt.Sprintf(`<img src="%s" alt="%s"%s>`, dataURL(mime, picture), html.EscapeString(alt), width(o.Metadata[mime]))
+			return outputView{Class: "figure", HTML: template.HTML(img)}, true
 		}
-		if mime == "image/svg+xml" {
-			s = base64.StdEncoding.EncodeToString([]byte(s))
-		}
-		url := "data:" + mime + ";base64," + strings.Join(strings.Fields(s), "")
-		return outputView{Class: "figure", URL: template.URL(url), Alt: alt, Width: width(o.Metadata[mime])}, true
 	}
 	for _, mime := range []string{"text/plain", "text/latex"} {
 		if s, ok := o.text(mime); ok {
@@ -171,14 +164,24 @@ func (p *prose) output(o *Output, alt string) (outputView, bool) {
 	return outputView{Class: "stream", Text: "An output of type " + kinds + " is in the notebook."}, true
 }
 
-// width returns the width that a picture's metadata asks for, in pixels of the page.
+// picture returns the bytes of a picture.
+func (o *Output) picture(mime string) ([]byte, bool) {
+	s, ok := o.text(mime)
+	if !ok || mime == "image/svg+xml" {
+		return []byte(s), ok
+	}
+	b, err := base64.StdEncoding.DecodeString(strings.Join(strings.Fields(s), ""))
+	return b, err == nil
+}
+
+// width returns the attribute for the width that a picture's metadata asks for, in pixels of the page.
 func width(metadata any) string {
 	m, _ := metadata.(map[string]any)
 	n, _ := m["width"].(json.Number)
-	if f, err := n.Float64(); err != nil || f <= 0 {
-		return ""
+	if f, err := n.Float64(); err == nil && f >= 1 {
+		return fmt.Sprintf(` width="%.0f"`, f)
 	}
-	return n.String()
+	return ""
 }
 
 // maxText is the length of a text from which a report shows only its two ends, in bytes: pages of many megabytes stop
