@@ -109,19 +109,23 @@ func (d *decoding) run() error {
 			continue
 		}
 		if ended := d.flushed(); ended != nil { // these are the symbols owed at the end
-			d.bits = append(d.bits, d.agreed(ended)...)
-			return nil
+			return d.end(ended)
 		}
 		if err := d.fault(i, symbol); err != nil {
 			return err
 		}
 	}
-	survivors := d.flushed()
-	if survivors == nil {
-		survivors = d.unfinished()
+	if ended := d.flushed(); ended != nil {
+		return d.end(ended)
 	}
-	d.bits = append(d.bits, d.agreed(survivors)...)
-	return nil
+	return d.end(d.unfinished())
+}
+
+// end takes the bits in which the survivors agree as the last.
+func (d *decoding) end(survivors []survivor) error {
+	bits, err := d.agreed(survivors)
+	d.bits = append(d.bits, bits...)
+	return err
 }
 
 // skip reads n symbols that may be anything.

@@ -1,8 +1,6 @@
 package linecode
 
-import (
-	"slices"
-)
+import "slices"
 
 // A survivor is one of the places at which the encoder can be after k symbols of the decoding's segment: the at-th of
 // its set. It stands for the data that lead there.
@@ -99,13 +97,16 @@ func (d *decoding) unfinished() []survivor {
 
 // agreed returns the bits of the segment in which survivors agree. After a fault the state in which the segment began is
 // unknown; then the first survivor's is taken, and those that began in another have no say.
-func (d *decoding) agreed(survivors []survivor) []byte {
+func (d *decoding) agreed(survivors []survivor) ([]byte, error) {
 	bits := d.data(survivors[0])
 	common := len(bits)
 	for _, other := range survivors[1:] {
+		if d.ctx.Err() != nil {
+			return nil, d.ctx.Err()
+		}
 		common = min(common, d.agreement(survivors[0], bits, other))
 	}
-	return bits[:common]
+	return bits[:common], nil
 }
 
 // agreement returns the number of bits in which the data of a survivor, given, and those of another agree. Both go back
