@@ -221,3 +221,28 @@ sys.stdout.buffer.write((nbformat.writes(nbformat.read(sys.argv[1], as_version=4
 		t.Errorf("Jupyter saves it as\n%s\nwant\n%s", out, want)
 	}
 }
+
+// FuzzParse feeds the reader foreign bytes: it never panics, and what it accepts it writes so that it reads the same.
+func FuzzParse(f *testing.F) {
+	saved, err := os.ReadFile("testdata/saved.ipynb")
+	if err != nil {
+		f.Fatal(err)
+	}
+	for _, s := range []string{string(saved), withCells(5, codeCell), withCells(4, codeCell), `{"cells": [], "cells": {}}`, "[[[", "\ufeff{}", `{"cells": [1, ]}`} {
+		f.Add([]byte(s))
+	}
+	f.Fuzz(func(t *testing.T, data []byte) {
+		n, err := parse(data)
+		if err != nil {
+			return
+		}
+		first := encoded(t, n)
+		again, err := parse(first)
+		if err != nil {
+			t.Fatalf("what was written is refused: %v\n%s", err, first)
+		}
+		if second := encoded(t, again); !bytes.Equal(first, second) {
+			t.Errorf("written\n%s\nthen\n%s", first, second)
+		}
+	})
+}
