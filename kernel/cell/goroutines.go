@@ -137,7 +137,10 @@ func (l *lowering) goStmt(g *ast.GoStmt) ast.Stmt {
 	if f, ok := call.Fun.(*ast.FuncLit); ok && len(call.Args) == 0 && f.Type.Results == nil {
 		lit = f
 	}
-	block.List = append(block.List, &ast.ExprStmt{X: l.hook("Go", pos, lit)})
+	f := l.temp(pos)
+	block.List = append(block.List,
+		&ast.AssignStmt{Lhs: []ast.Expr{f}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{lit}},
+		&ast.ExprStmt{X: l.hook("Go", pos, &ast.Ident{Name: f.Name, NamePos: pos})})
 	return block
 }
 

@@ -1,6 +1,7 @@
 package cell
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"go/ast"
@@ -141,8 +142,33 @@ func (in *Interpreter) hooks() interp.Exports {
 			"Leave":    reflect.ValueOf(in.leave),
 			"Typed":    reflect.ValueOf(in.typed),
 			"TypeName": reflect.ValueOf(in.typeName),
+
+			"Clear":     reflect.ValueOf(func(v any) { reflect.ValueOf(v).Clear() }),
+			"MinInt":    reflect.ValueOf(least[int64]),
+			"MaxInt":    reflect.ValueOf(most[int64]),
+			"MinUint":   reflect.ValueOf(least[uint64]),
+			"MaxUint":   reflect.ValueOf(most[uint64]),
+			"MinFloat":  reflect.ValueOf(least[float64]),
+			"MaxFloat":  reflect.ValueOf(most[float64]),
+			"MinString": reflect.ValueOf(least[string]),
+			"MaxString": reflect.ValueOf(most[string]),
 		},
 	}
+}
+
+// least and most are min and max with any number of arguments.
+func least[T cmp.Ordered](first T, rest ...T) T {
+	for _, x := range rest {
+		first = min(first, x)
+	}
+	return first
+}
+
+func most[T cmp.Ordered](first T, rest ...T) T {
+	for _, x := range rest {
+		first = max(first, x)
+	}
+	return first
 }
 
 // Run executes one cell; n is its number for positions ("cell[3]:2:5"). The bundle is nil if the last statement has no
@@ -187,9 +213,14 @@ func (in *Interpreter) Asked() []string {
 }
 
 // prepare checks, lowers and compiles a cell and, if all that succeeds, commits what it declares.
-func (in *Interpreter) prepare(r *run, code string) (*program, error) {
+func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 	in.types.Lock()
 	defer in.types.Unlock()
+	defer func() {
+		if v := recover(); v != nil {
+			p, err = nil, fmt.Errorf("this kernel cannot compile the cell, which is a fault of the kernel: %v", v)
+		}
+	}()
 	src, err := parse(in.fset, r.n, code)
 	if err != nil {
 		return nil, err
@@ -198,7 +229,7 @@ func (in *Interpreter) prepare(r *run, code string) (*program, error) {
 	if err != nil {
 		return nil, err
 	}
-	p, err := in.lower(u)
+	p, err = in.lower(u)
 	if err != nil {
 		return nil, err
 	}

@@ -32,6 +32,8 @@ type lowering struct {
 	u         *unit
 	p         *program
 	bad       []problem
+	nest      []ast.Node                           // loops and function literals around the node at hand
+	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
 	literals  int                                  // function literals so far
 	temps     int                                  // variables made so far
 	typed     map[*ast.CallExpr]map[int]types.Type // arguments whose static type goes with them
@@ -43,7 +45,7 @@ type lowering struct {
 // lower rewrites a checked cell into Go that the interpreter runs well.
 func (in *Interpreter) lower(u *unit) (*program, error) {
 	in.runs++
-	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}, typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{}}
+	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}, hoisted: map[*ast.BlockStmt]bool{}, typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{}}
 	pos := u.src.fn.Body.Lbrace
 	l.name(pos)
 	for _, d := range u.decls {
@@ -304,6 +306,12 @@ func (l *lowering) rewrite(n ast.Node) {
 
 // before folds constants and renames packages, from the outside in.
 func (l *lowering) before(c *astutil.Cursor) bool {
+	switch n := c.Node().(type) {
+	case *ast.ForStmt, *ast.RangeStmt, *ast.FuncLit:
+		l.nest = append(l.nest, n)
+	case *ast.CallExpr:
+		l.findTyped(n)
+	}
 	x, ok := c.Node().(ast.Expr)
 	if !ok {
 		return true
@@ -316,9 +324,6 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 			return false
 		}
 	}
-	if call, ok := x.(*ast.CallExpr); ok {
-		l.findTyped(call)
-	}
 	if s, ok := x.(*ast.SelectorExpr); ok {
 		if id, ok := s.X.(*ast.Ident); ok {
 			if p, ok := l.u.info.Uses[id].(*types.PkgName); ok {
@@ -328,6 +333,15 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		}
 	}
 	return true
+}
+
+// inLoop reports whether the node at hand lies in a loop of its own function.
+func (l *lowering) inLoop() bool {
+	if len(l.nest) == 0 {
+		return false
+	}
+	_, lit := l.nest[len(l.nest)-1].(*ast.FuncLit)
+	return !lit
 }
 
 // selector lowers a name of a package.
@@ -360,21 +374,96 @@ func importDecl(pos token.Pos, name, path string) ast.Decl {
 
 // after renames, from the inside out, and replaces what the interpreter does otherwise than Go.
 func (l *lowering) after(c *astutil.Cursor) bool {
+	switch c.Node().(type) {
+	case *ast.ForStmt, *ast.RangeStmt, *ast.FuncLit:
+		l.nest = l.nest[:len(l.nest)-1]
+	}
 	switch n := c.Node().(type) {
 	case *ast.Ident:
 		l.rename(n)
+	case *ast.SelectorExpr:
+		l.methodExpr(c, n)
 	case *ast.CallExpr:
 		l.wrapTyped(n)
-		if id, ok := n.Fun.(*ast.Ident); ok && l.u.info.Uses[id] == types.Universe.Lookup("recover") {
-			l.synthetic[n] = true
-			c.Replace(l.hook("Recover", n.Pos(), n))
+		if x := l.builtin(n); x != nil {
+			c.Replace(x)
 			break
 		}
 		l.methodCall(n)
+	case *ast.FuncLit:
+		l.capture(c, n)
 	case *ast.GoStmt:
 		c.Replace(l.goStmt(n))
+	case *ast.DeferStmt:
+		l.deferStmt(c, n)
+	case *ast.ForStmt:
+		l.forStmt(n, labelOf(c))
+	case *ast.RangeStmt:
+		if s := l.rangeStmt(n); s != nil {
+			c.Replace(s)
+		}
+	case *ast.TypeSwitchStmt:
+		c.Replace(l.typeSwitch(n))
+	case *ast.IfStmt:
+		l.ifAssertion(c, n)
+	case *ast.AssignStmt:
+		l.assertion(c, n)
+	case *ast.LabeledStmt:
+		l.label(c, n)
 	}
 	return true
+}
+
+// builtin replaces calls of predeclared functions that the interpreter lacks or does otherwise.
+func (l *lowering) builtin(n *ast.CallExpr) ast.Expr {
+	id, ok := ast.Unparen(n.Fun).(*ast.Ident)
+	if !ok {
+		return nil
+	}
+	b, ok := l.u.info.Uses[id].(*types.Builtin)
+	if !ok {
+		return nil
+	}
+	switch b.Name() {
+	case "recover":
+		l.synthetic[n] = true
+		return l.hook("Recover", n.Pos(), n)
+	case "clear":
+		return l.hook("Clear", n.Pos(), n.Args...)
+	case "min", "max":
+		return l.minMax(b.Name(), n)
+	}
+	return nil
+}
+
+// minMax turns min and max of variables into a call for the kind of their type.
+func (l *lowering) minMax(name string, n *ast.CallExpr) ast.Expr {
+	t := l.u.info.TypeOf(n)
+	basic, ok := t.Underlying().(*types.Basic)
+	if !ok {
+		return nil
+	}
+	hook := map[string]string{"min": "Min", "max": "Max"}[name]
+	var wide types.Type
+	switch info := basic.Info(); {
+	case info&types.IsString != 0:
+		hook, wide = hook+"String", types.Typ[types.String]
+	case info&types.IsFloat != 0:
+		hook, wide = hook+"Float", types.Typ[types.Float64]
+	case info&types.IsUnsigned != 0:
+		hook, wide = hook+"Uint", types.Typ[types.Uint64]
+	default:
+		hook, wide = hook+"Int", types.Typ[types.Int64]
+	}
+	pos := n.Pos()
+	convert := func(to types.Type, x ast.Expr) ast.Expr {
+		return &ast.CallExpr{Fun: l.typeExpr(to, pos), Lparen: pos, Args: []ast.Expr{x}, Rparen: pos}
+	}
+	args := make([]ast.Expr, len(n.Args))
+	for i, a := range n.Args {
+		args[i] = convert(wide, a)
+	}
+	return convert(t, l.hook(hook, pos, args...))
 }
 
 func (l *lowering) rename(id *ast.Ident) {

@@ -24,15 +24,17 @@ import (
 // cell could not be stopped, and it never takes the run id back, so that after a stop every earlier closure returns zero
 // values. Here the channel is made once and never closed, and the id is restored when what was to stop has stopped.
 type machine struct {
-	yaegi *interp.Interpreter
-	id    *uint64
-	done  chan struct{}
-	pair  reflect.Type // of what it keeps in an any for a value of a type with methods
+	yaegi  *interp.Interpreter
+	tables []interp.Exports
+	id     *uint64
+	done   chan struct{}
+	pair   reflect.Type // of what it keeps in an any for a value of a type with methods
 }
 
 func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, error) {
 	y := interp.New(interp.Options{Stdin: strings.NewReader(""), Stdout: stdout, Stderr: stderr, Unrestricted: true})
-	for _, table := range append([]interp.Exports{stdlib.Symbols, symbols.Symbols}, more...) {
+	tables := append([]interp.Exports{stdlib.Symbols, symbols.Symbols}, more...)
+	for _, table := range tables {
 		if err := y.Use(table); err != nil {
 			return nil, fmt.Errorf("cell: loading symbols: %w", err)
 		}
@@ -41,7 +43,7 @@ func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, err
 	if _, err := y.EvalWithContext(context.Background(), "0"); err != nil {
 		return nil, fmt.Errorf("cell: starting the interpreter: %w", err)
 	}
-	m := &machine{yaegi: y}
+	m := &machine{yaegi: y, tables: tables}
 	id, err := field[uint64](y, "id")
 	if err != nil {
 		return nil, err
@@ -139,6 +141,14 @@ func (m *machine) call(name string) error {
 
 // has reports whether the symbol tables have the name of that package.
 func (m *machine) has(path, name string) bool {
-	_, ok := m.yaegi.Symbols(path)[path][name]
-	return ok
+	key := path + "/" + path[strings.LastIndexByte(path, '/')+1:]
+	if path == "math/rand/v2" {
+		key = path + "/rand"
+	}
+	for _, table := range m.tables {
+		if _, ok := table[key][name]; ok {
+			return true
+		}
+	}
+	return false
 }

@@ -5,6 +5,8 @@ import (
 	"go/ast"
 	"go/token"
 	"go/types"
+
+	"golang.org/x/tools/go/ast/astutil"
 )
 
 // A method T.M of a cell becomes a function, which the interpreter calls five times as fast, a variable that holds it, and
@@ -115,6 +117,23 @@ func (l *lowering) methodCall(call *ast.CallExpr) {
 	}
 	call.Fun = &ast.Ident{Name: l.slot(fn), NamePos: pos}
 	call.Args = append([]ast.Expr{recv}, call.Args...)
+}
+
+// methodExpr turns T.M, not called, into the method's function.
+func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
+	sel := l.u.info.Selections[s]
+	if sel == nil || sel.Kind() != types.MethodExpr {
+		return
+	}
+	fn, ok := sel.Obj().(*types.Func)
+	if !ok || l.slot(fn) == "" {
+		return
+	}
+	if len(sel.Index()) > 1 || !types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
+		l.fail(s.Pos(), "the method expression of a promoted method or of a pointer's method with a value receiver is not supported in cells; write a function")
+		return
+	}
+	c.Replace(&ast.Ident{Name: l.slot(fn), NamePos: s.Pos()})
 }
 
 // path follows embedded fields.
