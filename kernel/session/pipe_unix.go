@@ -28,7 +28,7 @@ func newPipe(which int) (_ *pipe, err error) {
 		return nil, err
 	}
 	syscall.CloseOnExec(saved)
-	p.saved = os.NewFile(uintptr(saved), os.NewFile(uintptr(p.fd), "").Name())
+	p.saved = os.NewFile(uintptr(saved), [...]string{os.Stdout.Name(), os.Stderr.Name()}[which])
 	defer func() {
 		if err != nil {
 			p.saved.Close()
