@@ -100,8 +100,12 @@ func (s Shape) Moment(n int) float64 {
 	sum := 0.0
 	for i, parts := 0, s.parts(); i < len(parts); i++ {
 		p := &parts[i]
-		panels := 1 + int(p.width*(math.Abs(p.rate)+2*math.Pi*math.Abs(p.turns))/2)
-		h := p.width / float64(panels)
+		width := p.width
+		if p.rate < 0 {
+			width = min(width, tail/-p.rate) // after that nothing is left
+		}
+		panels := 1 + int(width*(math.Abs(p.rate)+2*math.Pi*math.Abs(p.turns))/2)
+		h := width / float64(panels)
 		for k := range panels {
 			for j := range x {
 				u := (float64(k) + x[j]) * h
