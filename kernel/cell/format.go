@@ -182,14 +182,11 @@ func (in *Interpreter) unwrap(v reflect.Value) (reflect.Value, types.Type) {
 	}
 	in.types.Lock()
 	defer in.types.Unlock()
-	o := in.named[name]
-	if o == nil {
-		return inner, nil
+	t := in.named[name]
+	if t != nil && pointer {
+		t = types.NewPointer(t)
 	}
-	if pointer {
-		return inner, types.NewPointer(o.Type())
-	}
-	return inner, o.Type()
+	return inner, t
 }
 
 // byShape finds the one live struct type of the cells that a reflect type can stand for. Two types of the same shape in an
@@ -479,7 +476,7 @@ func (in *Interpreter) textMethod(v reflect.Value, t types.Type, name string) fu
 		return nil
 	}
 	index := sel.Index()[:len(sel.Index())-1]
-	f, ok := in.texts[fn]
+	f, ok := in.texts[in.canonical(fn)]
 	_, wantPtr := sig.Recv().Type().(*types.Pointer)
 	return func(v reflect.Value) string {
 		for _, i := range index {
@@ -504,4 +501,24 @@ func (in *Interpreter) textMethod(v reflect.Value, t types.Type, name string) fu
 		}
 		return f.Elem().Call([]reflect.Value{v})[0].String()
 	}
+}
+
+// canonical returns the method that has the interpreter's function: of an instance of a generic type there are several
+// equal ones.
+func (in *Interpreter) canonical(fn *types.Func) *types.Func {
+	if fn.Origin() == fn {
+		return fn
+	}
+	recv := fn.Signature().Recv().Type()
+	if p, ok := recv.(*types.Pointer); ok {
+		recv = p.Elem()
+	}
+	if n, ok := ofCells(recv); ok {
+		for _, i := range in.instances[n.Origin().Obj()] {
+			if i.is(list(n.TypeArgs())) && i.methods[fn.Name()] != nil {
+				return i.methods[fn.Name()]
+			}
+		}
+	}
+	return fn
 }

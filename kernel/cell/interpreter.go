@@ -62,7 +62,8 @@ type Interpreter struct {
 	phantoms  map[*types.Func]bool          // methods of cells that then did not compile
 	methods   map[types.Object]string       // method -> the interpreter's variable that holds its function
 	texts     map[*types.Func]reflect.Value // String and Error methods -> a pointer to the variable in methods
-	named     map[string]*types.TypeName    // the interpreter's name of a type -> the type
+	named     map[string]types.Type         // the interpreter's name of a type -> the type
+	instances map[types.Object][]*instance  // of generic functions and types
 	typeTable []types.Type                  // what the calls of typed in lowered code refer to
 	typeIDs   typeutil.Map
 	gens      generations
@@ -101,7 +102,7 @@ func New(opt Options) (*Interpreter, error) {
 	in := &Interpreter{
 		opt: opt, lib: lib,
 		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
-		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]*types.TypeName{}, gens: generations{},
+		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]types.Type{}, instances: map[types.Object][]*instance{}, gens: generations{},
 		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
 		marked:     map[string]bool{},
 		tracks:     tracks{cells: map[int][]*function{}, marks: map[string]*int{}},
@@ -252,7 +253,7 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 			return nil, err
 		}
 	}
-	if err := in.findTexts(u); err != nil {
+	if err := in.findTexts(p); err != nil {
 		return nil, err
 	}
 	in.tracks.add(u.src.n, p.functions)
@@ -261,8 +262,8 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 }
 
 // findTexts finds the variables of new String and Error methods.
-func (in *Interpreter) findTexts(u *unit) error {
-	for _, o := range u.objects {
+func (in *Interpreter) findTexts(p *program) error {
+	for o := range p.slots {
 		fn, ok := o.(*types.Func)
 		if !ok || in.methods[fn] == "" || fn.Name() != "String" && fn.Name() != "Error" || in.texts[fn].IsValid() {
 			continue
@@ -321,7 +322,7 @@ func (in *Interpreter) commit(u *unit, p *program) {
 		case *types.Func:
 			delete(in.phantoms, o)
 		case *types.TypeName:
-			in.named[p.slots[o]] = o
+			in.named[p.slots[o]] = o.Type()
 		}
 		delete(in.imports, name)
 		e := &entry{obj: o, cell: u.src.n, decl: u.texts[name], uses: p.uses[u.texts[name]]}
@@ -332,5 +333,11 @@ func (in *Interpreter) commit(u *unit, p *program) {
 	}
 	for o, s := range p.slots {
 		in.slots[o] = s
+	}
+	for o, list := range p.instances {
+		in.instances[o] = append(in.instances[o], list...)
+	}
+	for slot, t := range p.named {
+		in.named[slot] = t
 	}
 }

@@ -5,6 +5,7 @@ import (
 	"go/ast"
 	"go/token"
 	"go/types"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -23,7 +24,9 @@ type program struct {
 	printed                     bool                    // the last expression is a print, whose count is not shown
 	used                        map[string]bool         // aliases of packages that the interpreter has not imported before
 	functions                   []*function
-	marks                       map[string]bool // variables that hold the places of functions
+	instances                   map[types.Object][]*instance
+	named                       map[string]types.Type // instances of generic types, by their names in the interpreter
+	marks                       map[string]bool       // variables that hold the places of functions
 }
 
 // lowering rewrites the trees of one unit in place.
@@ -32,6 +35,7 @@ type lowering struct {
 	u         *unit
 	p         *program
 	bad       []problem
+	params    map[types.Object]bool                // type parameters of instances, as names of types
 	nest      []ast.Node                           // loops and function literals around the node at hand
 	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
 	literals  int                                  // function literals so far
@@ -45,7 +49,7 @@ type lowering struct {
 // lower rewrites a checked cell into Go that the interpreter runs well.
 func (in *Interpreter) lower(u *unit) (*program, error) {
 	in.runs++
-	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}}, synthetic: map[*ast.CallExpr]bool{}, hoisted: map[*ast.BlockStmt]bool{}, typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{}}
+	l := &lowering{in: in, u: u, p: &program{serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{}, used: map[string]bool{}, instances: map[types.Object][]*instance{}, named: map[string]types.Type{}}, synthetic: map[*ast.CallExpr]bool{}, hoisted: map[*ast.BlockStmt]bool{}, params: map[types.Object]bool{}, typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{}}
 	pos := u.src.fn.Body.Lbrace
 	l.name(pos)
 	for _, d := range u.decls {
@@ -75,7 +79,9 @@ func (in *Interpreter) lower(u *unit) (*program, error) {
 func (l *lowering) name(pos token.Pos) {
 	for _, name := range sorted(l.u.objects) {
 		switch o := l.u.objects[name].(type) {
-		case *types.TypeName, *types.Func:
+		case *types.TypeName:
+			l.p.slots[o] = l.in.gens.fresh(name)
+		case *types.Func:
 			l.p.slots[o] = l.in.gens.fresh(strings.ReplaceAll(name, ".", "_"))
 		}
 	}
@@ -122,7 +128,11 @@ func (l *lowering) fail(pos token.Pos, format string, args ...any) {
 func (l *lowering) decl(d ast.Decl) {
 	switch d := d.(type) {
 	case *ast.GenDecl:
-		if d.Tok == token.TYPE {
+		if d.Tok != token.TYPE {
+			break
+		}
+		d.Specs = slices.DeleteFunc(d.Specs, func(s ast.Spec) bool { return l.isConstraint(s.(*ast.TypeSpec)) })
+		if len(d.Specs) > 0 {
 			l.rewrite(d)
 			l.p.types = append(l.p.types, d)
 		}
@@ -135,9 +145,13 @@ func (l *lowering) decl(d ast.Decl) {
 func (l *lowering) function(d *ast.FuncDecl) {
 	name := d.Name.Name
 	from, to := d.Name.Pos(), d.End()
-	if recv, generic := receiver(d); recv != "" {
+	recv, generic := receiver(d)
+	if generic || d.Type.TypeParams != nil {
+		return // compiled when it is used
+	}
+	if recv != "" {
 		name = recv + "." + name
-		if fn, ok := l.u.objects[name].(*types.Func); ok && !generic {
+		if fn, ok := l.u.objects[name].(*types.Func); ok {
 			d = l.method(d, fn)
 		}
 	}
@@ -324,6 +338,35 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 			return false
 		}
 	}
+	if tv, ok := l.u.info.Types[x]; ok && tv.IsType() {
+		if _, ok := ofCells(tv.Type); ok {
+			c.Replace(l.typeExpr(tv.Type, x.Pos()))
+			return false
+		}
+	}
+	switch x := x.(type) {
+	case *ast.Ident:
+		if o := l.u.info.Uses[x]; l.params[o] {
+			if t := l.typeExpr(o.Type(), x.Pos()); t != nil {
+				c.Replace(t)
+			}
+			return false
+		}
+		if f := l.instantiate(x); f != nil {
+			c.Replace(f)
+			return false
+		}
+	case *ast.IndexExpr:
+		if f := l.instantiate(x.X); f != nil {
+			c.Replace(f)
+			return false
+		}
+	case *ast.IndexListExpr:
+		if f := l.instantiate(x.X); f != nil {
+			c.Replace(f)
+			return false
+		}
+	}
 	if s, ok := x.(*ast.SelectorExpr); ok {
 		if id, ok := s.X.(*ast.Ident); ok {
 			if p, ok := l.u.info.Uses[id].(*types.PkgName); ok {
@@ -487,7 +530,7 @@ func (l *lowering) rename(id *ast.Ident) {
 	switch {
 	case v.IsField() && v.Embedded():
 		// The field of an embedded type has the type's name, also the new one.
-		if s := l.slot(typeName(v.Type())); s != "" {
+		if s := l.typeSlot(v.Type()); s != "" {
 			id.Name = s
 		}
 	case !v.IsField() && types.Universe.Lookup(id.Name) != nil:

@@ -97,7 +97,7 @@ func (l *lowering) methodCall(call *ast.CallExpr) {
 		return
 	}
 	fn, ok := sel.Obj().(*types.Func)
-	if !ok || l.slot(fn) == "" {
+	if !ok || types.IsInterface(fn.Signature().Recv().Type()) || l.methodSlot(fn) == "" {
 		return
 	}
 	if len(call.Args) == 1 {
@@ -115,7 +115,7 @@ func (l *lowering) methodCall(call *ast.CallExpr) {
 	case !isPtr && wantPtr:
 		recv = &ast.UnaryExpr{OpPos: s.X.Pos(), Op: token.AND, X: recv}
 	}
-	call.Fun = &ast.Ident{Name: l.slot(fn), NamePos: pos}
+	call.Fun = &ast.Ident{Name: l.methodSlot(fn), NamePos: pos}
 	call.Args = append([]ast.Expr{recv}, call.Args...)
 }
 
@@ -126,14 +126,14 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 		return
 	}
 	fn, ok := sel.Obj().(*types.Func)
-	if !ok || l.slot(fn) == "" {
+	if !ok || types.IsInterface(fn.Signature().Recv().Type()) || l.methodSlot(fn) == "" {
 		return
 	}
 	if len(sel.Index()) > 1 || !types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
 		l.fail(s.Pos(), "the method expression of a promoted method or of a pointer's method with a value receiver is not supported in cells; write a function")
 		return
 	}
-	c.Replace(&ast.Ident{Name: l.slot(fn), NamePos: s.Pos()})
+	c.Replace(&ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
 }
 
 // path follows embedded fields.
@@ -145,8 +145,10 @@ func (l *lowering) path(x ast.Expr, t types.Type, index []int) (ast.Expr, types.
 		}
 		f := u.(*types.Struct).Field(i)
 		name := f.Name()
-		if s := l.slot(typeName(f.Type())); f.Embedded() && s != "" {
-			name = s
+		if f.Embedded() {
+			if s := l.typeSlot(f.Type()); s != "" {
+				name = s
+			}
 		}
 		x = &ast.SelectorExpr{X: x, Sel: &ast.Ident{Name: name, NamePos: x.End()}}
 		t = f.Type()

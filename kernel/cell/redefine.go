@@ -319,7 +319,7 @@ func (in *Interpreter) addMethods(u *unit, first *types.Package, ownTypes map[st
 		name, generic := receiver(f)
 		key := name + "." + f.Name.Name
 		if ownTypes[name] {
-			if fn, ok := u.info.Defs[f.Name].(*types.Func); ok && !generic {
+			if fn, ok := u.info.Defs[f.Name].(*types.Func); ok {
 				u.objects[key], u.texts[key] = fn, d
 			}
 			continue

@@ -196,6 +196,9 @@ func (l *lowering) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 func (l *lowering) namedType(t *types.Named, pos token.Pos) ast.Expr {
 	o := t.Obj()
 	var x ast.Expr
+	if _, ok := ofCells(t); ok {
+		return &ast.Ident{Name: l.typeInstance(t, pos).slot, NamePos: pos}
+	}
 	switch {
 	case o.Pkg() == nil: // error, comparable
 		x = &ast.Ident{Name: o.Name(), NamePos: pos}
@@ -214,26 +217,11 @@ func (l *lowering) namedType(t *types.Named, pos token.Pos) ast.Expr {
 		}
 		x = &ast.SelectorExpr{X: &ast.Ident{Name: l.alias(o.Pkg()), NamePos: pos}, Sel: &ast.Ident{Name: o.Name(), NamePos: pos}}
 	}
-	var args []ast.Expr
-	for i := range t.TypeArgs().Len() {
-		a := l.typeExpr(t.TypeArgs().At(i), pos)
-		if a == nil {
-			return nil
-		}
-		args = append(args, a)
+	if t.TypeArgs().Len() > 0 {
+		l.fail(pos, "cells cannot use the generic type %s of a compiled package", types.TypeString(t, brief))
+		return nil
 	}
-	return index(x, args, pos)
-}
-
-// index instantiates a generic type or function.
-func index(x ast.Expr, args []ast.Expr, pos token.Pos) ast.Expr {
-	switch len(args) {
-	case 0:
-		return x
-	case 1:
-		return &ast.IndexExpr{X: x, Lbrack: pos, Index: args[0], Rbrack: pos}
-	}
-	return &ast.IndexListExpr{X: x, Lbrack: pos, Indices: args, Rbrack: pos}
+	return x
 }
 
 func (l *lowering) funcType(t *types.Signature, pos token.Pos) ast.Expr {
