@@ -310,6 +310,9 @@ func (p *PSD) search(ctx context.Context, q *plan, lo, hi, want float64) float64
 	for {
 		mid := lo + (hi-lo)/2
 		if mid <= lo || mid >= hi {
+			if p.between(ctx, q, lo, math.Nextafter(lo, math.Inf(1))) >= want {
+				return lo
+			}
 			return hi
 		}
 		below := p.between(ctx, q, lo, math.Nextafter(mid, math.Inf(1)))

@@ -50,7 +50,25 @@ func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
 	if err != nil {
 		return nil, err
 	}
-	return exact(page.Context(), c.Chain(), d)
+	ch, err := chainOf(c)
+	if err != nil {
+		return nil, err
+	}
+	return exact(page.Context(), ch, d)
+}
+
+// chainOf returns the code's chain. One that is too large, or an interrupt, panics there and is an error here.
+func chainOf(c *linecode.Code) (ch *linecode.Chain, err error) {
+	defer func() {
+		switch r := recover().(type) {
+		case nil:
+		case error:
+			err = fmt.Errorf("spectrum: %w", r)
+		default:
+			panic(r)
+		}
+	}()
+	return c.Chain(), nil
 }
 
 // OfChain is [Exact] for a chain that is given edge by edge.
