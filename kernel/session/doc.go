@@ -17,8 +17,8 @@
 //
 // Text of a cell is collected and sent after 50 ms, or at 64 kB, and before anything else of the same cell is sent; a
 // character is never cut. Each cell has an output of its own, which carries the request that started it, so goroutines
-// that outlive their cell go on writing under it. What is written to the descriptors 1 and 2 of the process (os.Stdout,
-// package log, compiled code) belongs to the cell that runs or ran last.
+// that outlive their cell go on writing under it. What is written to the standard output and error of the process
+// (os.Stdout, package log, compiled code) belongs to the cell that runs or ran last.
 //
 // Of one cell, [TextLimit] bytes of text are sent. What comes after that is only in a file, and the cell says in which.
 package session

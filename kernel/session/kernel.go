@@ -45,11 +45,11 @@ type kernel struct {
 	version string                      // of the kernel, for kernel_info
 	start   func() (interpreter, error) // waits until the interpreter is there
 	exit    func(code int)              // ends the process, for os.Exit of a cell
-	capture interface{ catchUp() }      // brings what was written to the descriptors to the current output
-	notice  string                      // for stderr of the first cell; owned by the executing goroutine
-	count   int                         // of the last numbered cell; owned by the executing goroutine
-	queue   *wire.Queue[*wire.Message]  // execute requests
-	current atomic.Pointer[output]      // of the cell that runs or ran last
+	capture capture
+	notice  string                     // for stderr of the first cell; owned by the executing goroutine
+	count   int                        // of the last numbered cell; owned by the executing goroutine
+	queue   *wire.Queue[*wire.Message] // execute requests
+	current atomic.Pointer[output]     // of the cell that runs or ran last
 	history history
 
 	questions questions
@@ -63,10 +63,17 @@ type kernel struct {
 	idle   chan struct{}           // closed when the cell that runs has been answered; guarded by mu
 }
 
+// A capture brings what was written to the descriptors of the process to the current output.
+type capture interface {
+	catchUp() // what Go code wrote; cheap
+	settle()  // everything, at the end of a cell
+}
+
 // noCapture stands for descriptors that are left alone.
 type noCapture struct{}
 
 func (noCapture) catchUp() {}
+func (noCapture) settle()  {}
 
 func newKernel(server *wire.Server, log *slog.Logger, start func() (interpreter, error)) *kernel {
 	k := &kernel{

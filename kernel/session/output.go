@@ -153,7 +153,7 @@ func (o *output) send(kind string, content any) {
 
 // finish sends what waits. Text that comes later, of goroutines, is counted anew.
 func (o *output) finish() {
-	o.k.capture.catchUp()
+	o.k.capture.settle()
 	o.mu.Lock()
 	defer o.mu.Unlock()
 	o.flush(true)

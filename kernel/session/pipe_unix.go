@@ -3,16 +3,19 @@
 package session
 
 import (
+	"log"
 	"os"
 	"sync"
 	"syscall"
 )
 
-// A pipe stands in for one of the descriptors 1 and 2.
+// A pipe stands in for the standard output or the standard error.
 type pipe struct {
-	fd    int      // 1 or 2
-	saved *os.File // what the descriptor was
-	end   *os.File // where to read what is written to it; does not block
+	which int      // 0 or 1
+	saved *os.File // where descriptor which+1 led
+	write *os.File // the standard error for Go code; nil for the standard output
+	old   *os.File // os.Stderr as it was; if it were forgotten, its finalizer would close descriptor 2
+	end   *os.File // where to read; does not block
 	raw   syscall.RawConn
 
 	mu     sync.Mutex     // held while text is read and delivered, so that it is delivered in order
@@ -22,13 +25,13 @@ type pipe struct {
 }
 
 func newPipe(which int) (_ *pipe, err error) {
-	p := &pipe{fd: which + 1}
-	saved, err := syscall.Dup(p.fd)
+	p := &pipe{which: which}
+	saved, err := syscall.Dup(which + 1)
 	if err != nil {
 		return nil, err
 	}
 	syscall.CloseOnExec(saved)
-	p.saved = os.NewFile(uintptr(saved), [...]string{os.Stdout.Name(), os.Stderr.Name()}[which])
+	p.saved = os.NewFile(uintptr(saved), standard(which).Name())
 	defer func() {
 		if err != nil {
 			p.saved.Close()
@@ -39,24 +42,38 @@ func newPipe(which int) (_ *pipe, err error) {
 	if err := syscall.Pipe(ends[:]); err != nil {
 		return nil, err
 	}
-	defer syscall.Close(ends[1])
-	if err := syscall.SetNonblock(ends[0], true); err != nil {
-		syscall.Close(ends[0])
-		return nil, err
-	}
 	syscall.CloseOnExec(ends[0])
+	syscall.CloseOnExec(ends[1])
+	write := os.NewFile(uintptr(ends[1]), standard(which).Name())
+	err = syscall.SetNonblock(ends[0], true)
 	p.end = os.NewFile(uintptr(ends[0]), "pipe")
-	if p.raw, err = p.end.SyscallConn(); err == nil {
-		err = duplicate(ends[1], p.fd)
+	if err == nil {
+		p.raw, err = p.end.SyscallConn()
+	}
+	if err == nil && which == 0 {
+		err = duplicate(ends[1], 1)
 	}
 	if err != nil {
 		p.end.Close()
+		write.Close()
 		return nil, err
 	}
+	if which == 0 {
+		write.Close()
+		return p, nil
+	}
+	p.write, p.old = write, os.Stderr
+	os.Stderr = write
+	log.SetOutput(write)
 	return p, nil
 }
 
+func standard(which int) *os.File { return [...]*os.File{os.Stdout, os.Stderr}[which] }
+
 func (p *pipe) original() *os.File { return p.saved }
+
+// leadErrors lets descriptor 2, which Go code does not write to any more, lead to a file.
+func leadErrors(to *os.File) error { return duplicate(int(to.Fd()), 2) }
 
 // start delivers what is written from now on.
 func (p *pipe) start(to func([]byte)) {
@@ -98,14 +115,21 @@ func (p *pipe) drain(fd int) error {
 	return syscall.EAGAIN
 }
 
-// restore delivers the rest and puts the descriptor back.
+// restore delivers the rest and puts everything back; twice does no harm.
 func (p *pipe) restore() {
 	p.catchUp()
 	p.mu.Lock()
-	defer p.mu.Unlock()
-	if !p.undone {
-		p.undone = true
-		duplicate(int(p.saved.Fd()), p.fd)
-		p.end.Close()
+	undone := p.undone
+	p.undone = true
+	p.mu.Unlock()
+	if undone {
+		return
 	}
+	duplicate(int(p.saved.Fd()), p.which+1)
+	if p.write != nil {
+		os.Stderr = p.old
+		log.SetOutput(p.old)
+		p.write.Close()
+	}
+	p.end.Close() // waits for those who drain it
 }

@@ -9,7 +9,11 @@ import (
 	"unsafe"
 )
 
-var peekNamedPipe = syscall.NewLazyDLL("kernel32.dll").NewProc("PeekNamedPipe")
+var (
+	kernel32      = syscall.NewLazyDLL("kernel32.dll")
+	peekNamedPipe = kernel32.NewProc("PeekNamedPipe")
+	setStdHandle  = kernel32.NewProc("SetStdHandle")
+)
 
 // A pipe stands in for the standard output or error. Windows has no dup2: what is replaced is the handle that is looked
 // up by name and the variable of package os, so that Go code and processes started later write to the pipe.
@@ -43,13 +47,22 @@ func newPipe(which int) (*pipe, error) {
 
 func (p *pipe) point(file *os.File, handle syscall.Handle) {
 	*p.file = file
-	syscall.NewLazyDLL("kernel32.dll").NewProc("SetStdHandle").Call(uintptr(p.name), uintptr(handle))
+	setStdHandle.Call(uintptr(p.name), uintptr(handle))
 	if p.file == &os.Stderr {
 		log.SetOutput(file)
 	}
 }
 
 func (p *pipe) original() *os.File { return p.saved }
+
+// leadErrors lets the handle of the standard error, which Go code does not look up any more, lead to a file.
+func leadErrors(to *os.File) error {
+	name := syscall.STD_ERROR_HANDLE
+	if ok, _, err := setStdHandle.Call(uintptr(name), to.Fd()); ok == 0 {
+		return err
+	}
+	return nil
+}
 
 // start delivers what is written from now on.
 func (p *pipe) start(to func([]byte)) {
@@ -92,13 +105,14 @@ func (p *pipe) drain() bool {
 	return !p.undone
 }
 
-// restore delivers the rest and puts the handle back.
+// restore delivers the rest and puts everything back; twice does no harm.
 func (p *pipe) restore() {
 	p.catchUp()
 	p.mu.Lock()
-	defer p.mu.Unlock()
-	if !p.undone {
-		p.undone = true
+	undone := p.undone
+	p.undone = true
+	p.mu.Unlock()
+	if !undone {
 		p.point(p.saved, p.handle)
 		p.write.Close()
 		p.end.Close()

@@ -25,7 +25,7 @@ type Options struct {
 // started it (JPY_PARENT_PID) is gone. os.Exit of a cell ends the process within Serve, with the cell's code and with its
 // output delivered.
 //
-// A kernel is one per process: Serve takes the descriptors 1 and 2, the signals and the crash output of the process, and
+// A kernel is one per process: Serve takes the descriptors 1 and 2, os.Stderr and the signals of the process, and
 // gives them back when it returns.
 func Serve(ctx context.Context, connectionFile string, opt Options) error {
 	c, err := wire.ReadConnection(connectionFile)
@@ -50,15 +50,13 @@ func Serve(ctx context.Context, connectionFile string, opt Options) error {
 		return err
 	}
 	defer server.Close()
-	crash := openCrash(connectionFile, log)
-	defer crash.close()
+	desc.crash = openCrash(connectionFile, log)
 
 	k := newKernel(server, log, func() (interpreter, error) { return cell.New(cell.Options{Parameters: opt.Parameters}) })
 	k.version = opt.Version
-	k.notice = crash.notice
+	k.notice = desc.crash.notice
 	k.capture = desc
 	k.exit = func(code int) {
-		crash.close()
 		desc.restore()
 		os.Exit(code)
 	}
@@ -93,15 +91,18 @@ func Serve(ctx context.Context, connectionFile string, opt Options) error {
 	return k.run(ctx)
 }
 
-// A descriptors is the standard output and error of the process, turned into pipes whose content goes to cells.
+// A descriptors is the standard output and error of the process, turned into pipes whose content goes to cells. What Go
+// code writes to the standard error goes through a pipe of its own; descriptor 2 is left to the runtime's last words.
 type descriptors struct {
-	stderr io.Writer // where standard error went before; the log goes on there
+	stderr io.Writer // where the standard error went before; the log goes on there
 	pipes  [2]*pipe
+	crash  *crash
+	to     func(which int, p []byte)
 }
 
 // captureDescriptors redirects the descriptors. What comes through them waits until deliver is called.
 func captureDescriptors() (*descriptors, error) {
-	d := &descriptors{}
+	d := &descriptors{crash: &crash{}}
 	for i := range d.pipes {
 		p, err := newPipe(i)
 		if err != nil {
@@ -115,15 +116,24 @@ func captureDescriptors() (*descriptors, error) {
 }
 
 func (d *descriptors) deliver(to func(which int, p []byte)) {
+	d.to = to
 	for i, p := range d.pipes {
 		p.start(func(text []byte) { to(i, text) })
 	}
 }
 
-// catchUp delivers all that has been written so far.
+// catchUp delivers what Go code has written so far.
 func (d *descriptors) catchUp() {
 	for _, p := range d.pipes {
 		p.catchUp()
+	}
+}
+
+// settle delivers all that has been written so far.
+func (d *descriptors) settle() {
+	d.catchUp()
+	if text := d.crash.rest(); len(text) > 0 {
+		d.to(1, text)
 	}
 }
 
@@ -134,4 +144,5 @@ func (d *descriptors) restore() {
 			p.restore()
 		}
 	}
+	d.crash.close()
 }
