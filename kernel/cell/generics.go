@@ -114,7 +114,7 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 	defer func() { l.nest = nest }()
 	from, to := whole.Name.Pos(), whole.End()
 	slot := f.Name.Name
-	l.rewrite(f)
+	l.rewrite(f, f.Body)
 	f.Name.Name = slot
 	l.mark(name, kernel+"at_"+slot, from, to, f.Body)
 	l.p.funcs = append(l.p.funcs, f)

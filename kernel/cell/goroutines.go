@@ -82,34 +82,13 @@ func (l *lowering) goStmt(g *ast.GoStmt) ast.Stmt {
 	pos := g.Pos()
 	call := g.Call
 	block := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
-	keep := func(x ast.Expr) ast.Expr {
-		tv := l.u.info.Types[x]
-		if _, lit := x.(*ast.BasicLit); lit || tv.Value != nil || tv.IsNil() {
-			return x
-		}
-		id := l.temp(pos)
-		block.List = append(block.List, &ast.AssignStmt{Lhs: []ast.Expr{id}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{x}})
-		return &ast.Ident{Name: id.Name, NamePos: pos}
-	}
 	switch f := ast.Unparen(call.Fun).(type) {
-	case *ast.Ident:
-		if _, variable := l.u.info.Uses[f].(*types.Var); variable {
-			call.Fun = keep(f)
-		}
-	case *ast.SelectorExpr:
-		if sel := l.u.info.Selections[f]; sel != nil && sel.Kind() == types.MethodVal {
-			if _, ptr := sel.Recv().Underlying().(*types.Pointer); !ptr && l.u.info.Types[f.X].Addressable() {
-				f.X = keep(&ast.ParenExpr{Lparen: pos, X: &ast.UnaryExpr{OpPos: pos, Op: token.AND, X: f.X}, Rparen: pos})
-			} else {
-				f.X = keep(f.X)
-			}
-		} else if sel != nil {
-			call.Fun = keep(f)
-		}
 	case *ast.FuncLit:
+	case *ast.SelectorExpr:
+		l.keepReceiver(&block.List, call, f)
 	default:
 		if tv := l.u.info.Types[call.Fun]; tv.IsValue() {
-			call.Fun = keep(call.Fun)
+			call.Fun = l.keep(&block.List, call.Fun)
 		}
 	}
 	if len(call.Args) == 1 {
@@ -125,10 +104,7 @@ func (l *lowering) goStmt(g *ast.GoStmt) ast.Stmt {
 		}
 	}
 	for i, a := range call.Args {
-		if id, ok := a.(*ast.Ident); ok && l.made(id) {
-			continue
-		}
-		call.Args[i] = keep(a)
+		call.Args[i] = l.keep(&block.List, a)
 	}
 	lit := &ast.FuncLit{
 		Type: &ast.FuncType{Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos}},
@@ -139,7 +115,7 @@ func (l *lowering) goStmt(g *ast.GoStmt) ast.Stmt {
 	}
 	f := l.temp(pos)
 	block.List = append(block.List,
-		&ast.AssignStmt{Lhs: []ast.Expr{f}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{lit}},
+		&ast.AssignStmt{Lhs: []ast.Expr{f}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{l.ownFrame(lit)}},
 		&ast.ExprStmt{X: l.hook("Go", pos, &ast.Ident{Name: f.Name, NamePos: pos})})
 	return block
 }

@@ -9,6 +9,7 @@ import (
 	"go/token"
 	"go/types"
 	"reflect"
+	"runtime/debug"
 	"strings"
 	"sync"
 	"sync/atomic"
@@ -219,6 +220,9 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 	defer in.types.Unlock()
 	defer func() {
 		if v := recover(); v != nil {
+			if debugStack {
+				debug.PrintStack()
+			}
 			p, err = nil, fmt.Errorf("this kernel cannot compile the cell, which is a fault of the kernel: %v", v)
 		}
 	}()
@@ -341,3 +345,5 @@ func (in *Interpreter) commit(u *unit, p *program) {
 		in.named[slot] = t
 	}
 }
+
+var debugStack = true

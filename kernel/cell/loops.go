@@ -193,6 +193,9 @@ func (l *lowering) rangeStmt(n *ast.RangeStmt) ast.Stmt {
 		l.fail(n.Pos(), "cells cannot range over a function yet; call it with a function literal")
 		return nil
 	}
+	if n.Tok == token.ASSIGN {
+		l.rangeAssign(n)
+	}
 	if n.Tok != token.DEFINE {
 		return nil
 	}
@@ -215,6 +218,26 @@ func (l *lowering) rangeStmt(n *ast.RangeStmt) ast.Stmt {
 	}
 	n.Body.List = append(copies, n.Body.List...)
 	return nil
+}
+
+// rangeAssign makes a range that assigns to variables, which the interpreter forgets to do, one that declares some.
+func (l *lowering) rangeAssign(n *ast.RangeStmt) {
+	pos := n.Pos()
+	n.Tok = token.DEFINE
+	as := &ast.AssignStmt{TokPos: pos, Tok: token.ASSIGN}
+	for _, x := range []*ast.Expr{&n.Key, &n.Value} {
+		if id, ok := (*x).(*ast.Ident); *x == nil || ok && id.Name == "_" {
+			continue
+		}
+		t := l.temp(pos)
+		as.Lhs, as.Rhs = append(as.Lhs, *x), append(as.Rhs, &ast.Ident{Name: t.Name, NamePos: pos})
+		*x = t
+	}
+	if len(as.Lhs) == 0 {
+		n.Key, n.Value, n.Tok = nil, nil, token.ILLEGAL
+		return
+	}
+	n.Body.List = append([]ast.Stmt{as}, n.Body.List...)
 }
 
 func (l *lowering) rangeInt(n *ast.RangeStmt, t types.Type) ast.Stmt {
@@ -240,26 +263,52 @@ func (l *lowering) rangeInt(n *ast.RangeStmt, t types.Type) ast.Stmt {
 	}
 }
 
-// capture makes a function literal that is handed to compiled code in a loop keep the variables of its turn: the interpreter
-// does so only for literals that are assigned.
+// capture gives a function literal a frame of its own where the interpreter needs one to be right: in loops, since it hands
+// literals to compiled code with the variables of the last turn, and in functions that defer, since a closure that is called
+// while its frame runs its deferred calls waits for itself for ever.
 func (l *lowering) capture(c *astutil.Cursor, n *ast.FuncLit) {
-	if !l.inLoop() {
+	defers := l.defers()
+	if !l.inLoop() && !defers {
 		return
 	}
-	switch p := c.Parent().(type) {
+	switch c.Parent().(type) {
 	case *ast.CallExpr:
 		if c.Name() != "Args" {
-			return
+			return // called at once, deferred, or started as a goroutine
 		}
-	case *ast.KeyValueExpr:
-		if c.Name() != "Value" {
-			return
-		}
-	case *ast.CompositeLit:
+	case *ast.KeyValueExpr, *ast.CompositeLit:
 	default:
-		_ = p
-		return
+		if !defers {
+			return
+		}
 	}
+	l.replace(c, l.ownFrame(n))
+}
+
+// defers reports whether the function around the node at hand defers calls.
+func (l *lowering) defers() bool {
+	body := l.body0
+	for i := len(l.nest) - 1; i >= 0; i-- {
+		if lit, ok := l.nest[i].(*ast.FuncLit); ok {
+			body = lit.Body
+			break
+		}
+	}
+	found := false
+	ast.Inspect(body, func(n ast.Node) bool {
+		switch n.(type) {
+		case *ast.FuncLit:
+			return false
+		case *ast.DeferStmt:
+			found = true
+		}
+		return !found
+	})
+	return found
+}
+
+// ownFrame returns an expression that makes the literal in a frame of its own.
+func (l *lowering) ownFrame(n *ast.FuncLit) ast.Expr {
 	pos := n.Pos()
 	f := l.temp(pos)
 	outer := &ast.FuncLit{
@@ -274,20 +323,7 @@ func (l *lowering) capture(c *astutil.Cursor, n *ast.FuncLit) {
 	}
 	call := &ast.CallExpr{Fun: outer, Lparen: pos, Rparen: pos}
 	l.synthetic[call] = true
-	c.Replace(call)
-}
-
-// deferStmt does the same for a literal that is deferred in a loop.
-func (l *lowering) deferStmt(c *astutil.Cursor, n *ast.DeferStmt) {
-	lit, ok := n.Call.Fun.(*ast.FuncLit)
-	if !ok || !l.inLoop() {
-		return
-	}
-	f := l.temp(n.Pos())
-	n.Call.Fun = &ast.Ident{Name: f.Name, NamePos: n.Pos()}
-	c.Replace(&ast.BlockStmt{Lbrace: n.Pos(), List: []ast.Stmt{
-		&ast.AssignStmt{Lhs: []ast.Expr{f}, TokPos: n.Pos(), Tok: token.DEFINE, Rhs: []ast.Expr{lit}}, n,
-	}, Rbrace: n.End()})
+	return call
 }
 
 // label moves the label of a statement that became a block to the statement in it that break means.

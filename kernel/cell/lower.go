@@ -36,6 +36,7 @@ type lowering struct {
 	p         *program
 	bad       []problem
 	params    map[types.Object]bool                // type parameters of instances, as names of types
+	body0     *ast.BlockStmt                       // body of the function that is being lowered
 	nest      []ast.Node                           // loops and function literals around the node at hand
 	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
 	literals  int                                  // function literals so far
@@ -133,7 +134,7 @@ func (l *lowering) decl(d ast.Decl) {
 		}
 		d.Specs = slices.DeleteFunc(d.Specs, func(s ast.Spec) bool { return l.isConstraint(s.(*ast.TypeSpec)) })
 		if len(d.Specs) > 0 {
-			l.rewrite(d)
+			l.rewrite(d, nil)
 			l.p.types = append(l.p.types, d)
 		}
 	case *ast.FuncDecl:
@@ -155,7 +156,7 @@ func (l *lowering) function(d *ast.FuncDecl) {
 			d = l.method(d, fn)
 		}
 	}
-	l.rewrite(d)
+	l.rewrite(d, d.Body)
 	l.mark(name, kernel+"at_"+strings.ReplaceAll(name, ".", "_"), from, to, d.Body)
 	l.p.funcs = append(l.p.funcs, d)
 }
@@ -202,7 +203,7 @@ func (l *lowering) body(fn *ast.FuncDecl) {
 	}
 	fn.Body.List = list
 	from, to := fn.Body.Pos(), fn.Body.End()
-	l.rewrite(fn.Body)
+	l.rewrite(fn.Body, fn.Body)
 	l.mark("", kernel+"at", from, to, fn.Body)
 	l.guard(fn.Body)
 	l.p.entry = l.in.gens.fresh(kernel + "cell")
@@ -313,9 +314,12 @@ func (l *lowering) prints(x ast.Expr) bool {
 
 func isError(t types.Type) bool { return types.Identical(t, types.Universe.Lookup("error").Type()) }
 
-// rewrite lowers a tree in place.
-func (l *lowering) rewrite(n ast.Node) {
+// rewrite lowers a tree in place. Body is that of the function that it is, or nil.
+func (l *lowering) rewrite(n ast.Node, body *ast.BlockStmt) {
+	outer := l.body0
+	l.body0 = body
 	astutil.Apply(n, l.before, l.after)
+	l.body0 = outer
 }
 
 // before folds constants and renames packages, from the outside in.
@@ -333,14 +337,14 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 	if tv, ok := l.u.info.Types[x]; ok && tv.Value != nil {
 		if lit := l.constant(tv.Type, tv.Value, x); lit != nil {
 			if lit != x {
-				c.Replace(lit)
+				l.replace(c, lit)
 			}
 			return false
 		}
 	}
 	if tv, ok := l.u.info.Types[x]; ok && tv.IsType() {
 		if _, ok := ofCells(tv.Type); ok {
-			c.Replace(l.typeExpr(tv.Type, x.Pos()))
+			l.replace(c, l.typeExpr(tv.Type, x.Pos()))
 			return false
 		}
 	}
@@ -348,22 +352,22 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 	case *ast.Ident:
 		if o := l.u.info.Uses[x]; l.params[o] {
 			if t := l.typeExpr(o.Type(), x.Pos()); t != nil {
-				c.Replace(t)
+				l.replace(c, t)
 			}
 			return false
 		}
 		if f := l.instantiate(x); f != nil {
-			c.Replace(f)
+			l.replace(c, f)
 			return false
 		}
 	case *ast.IndexExpr:
 		if f := l.instantiate(x.X); f != nil {
-			c.Replace(f)
+			l.replace(c, f)
 			return false
 		}
 	case *ast.IndexListExpr:
 		if f := l.instantiate(x.X); f != nil {
-			c.Replace(f)
+			l.replace(c, f)
 			return false
 		}
 	}
@@ -376,6 +380,16 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		}
 	}
 	return true
+}
+
+// replace replaces an expression by one that takes over its type, since what lies around it is lowered later.
+func (l *lowering) replace(c *astutil.Cursor, x ast.Expr) {
+	if old, ok := c.Node().(ast.Expr); ok {
+		if tv, ok := l.u.info.Types[old]; ok {
+			l.u.info.Types[x] = tv
+		}
+	}
+	c.Replace(x)
 }
 
 // inLoop reports whether the node at hand lies in a loop of its own function.
@@ -429,7 +443,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.CallExpr:
 		l.wrapTyped(n)
 		if x := l.builtin(n); x != nil {
-			c.Replace(x)
+			l.replace(c, x)
 			break
 		}
 		l.methodCall(n)
@@ -450,9 +464,13 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.IfStmt:
 		l.ifAssertion(c, n)
 	case *ast.AssignStmt:
-		l.assertion(c, n)
+		if !l.parallel(c, n) {
+			l.assertion(c, n)
+		}
 	case *ast.LabeledStmt:
 		l.label(c, n)
+	case *ast.ReturnStmt:
+		l.returnStmt(c, n)
 	}
 	return true
 }

@@ -133,7 +133,7 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 		l.fail(s.Pos(), "the method expression of a promoted method or of a pointer's method with a value receiver is not supported in cells; write a function")
 		return
 	}
-	c.Replace(&ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
+	l.replace(c, &ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
 }
 
 // path follows embedded fields.
