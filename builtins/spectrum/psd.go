@@ -258,19 +258,22 @@ func (p *PSD) Density(dst, f []float64) []float64 {
 	if len(dst) != len(f) {
 		panic(fmt.Errorf("spectrum: Density of %d frequencies into %d values; give as many, or nil", len(f), len(dst)))
 	}
-	for _, x := range f {
-		if !(x >= 0) || math.IsInf(x, 0) {
-			panic(fmt.Errorf("spectrum: density at %v Hz; a frequency is finite and at least 0 (densities are one-sided)", x))
-		}
-	}
-	nu := make([]float64, len(f))
-	for i, x := range f {
-		nu[i] = x / p.drive.SymbolRate
-	}
-	p.evaluate(current(), dst, nu)
+	ctx := current()
 	scale := 2 * p.volts2() / p.drive.SymbolRate
-	for i := range dst {
-		dst[i] *= scale
+	nu := make([]float64, min(len(f), 16*block))
+	for rest := dst; len(f) > 0; {
+		n := min(len(f), len(nu))
+		for i, x := range f[:n] {
+			if !(x >= 0) || math.IsInf(x, 0) {
+				panic(fmt.Errorf("spectrum: density at %v Hz; a frequency is finite and at least 0 (densities are one-sided)", x))
+			}
+			nu[i] = x / p.drive.SymbolRate
+		}
+		p.evaluate(ctx, rest[:n], nu[:n])
+		for i := range n {
+			rest[i] *= scale
+		}
+		rest, f = rest[n:], f[n:]
 	}
 	return dst
 }
