@@ -234,8 +234,7 @@ func TestNullOfUnequalPulses(t *testing.T) {
 		q := z / (2 - z)
 		oneMinus := 2 * gap / (2 - z) // 1 - q
 		// The alternating part: signs (-1)^n on marks of density 1/2 and pulse (G+ + G-)/2.
-		alternating := 0.5 * real((1-q)/(1+q)) // 1 + 2 Re sum (-q)^n
-		alternating = 0.5 * real(oneMinus/(1+q))
+		alternating := 0.5 * real(oneMinus/(1+q)) // 1 + 2 Re sum (-q)^n
 		// The common part: marks of density 1/2 at random, pulse (G+ - G-)/2, whose area is 0.
 		common := 0.25 // p (1-p)
 		// Cross terms between signs and marks: odd and even moments of a symmetric stream are uncorrelated.

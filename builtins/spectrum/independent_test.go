@@ -89,6 +89,16 @@ func (c *clock) correlation(f, g []float64, lags, far int) []float64 {
 	return r[:lags]
 }
 
+// lingers tells whether the last lags are not negligible yet.
+func lingers(r []float64) bool {
+	for _, v := range r[len(r)-50:] {
+		if math.Abs(v) > 1e-13 {
+			return true
+		}
+	}
+	return false
+}
+
 // drawChain makes an irreducible chain of a few states with words of one or two symbols.
 func drawChain(t *rapid.T) *linecode.Chain {
 	n := rapid.IntRange(1, 4).Draw(t, "states")
@@ -116,6 +126,9 @@ func TestAgainstTimeRecursion(t *testing.T) {
 		}
 		c := unroll(ch)
 		r := c.correlation(c.level, c.level, lags, far)
+		if lingers(r) {
+			t.Skip("the time recursion is too short for this chain")
+		}
 		for _, nu := range []float64{0, 0.07, 0.31, 0.5, 0.83} {
 			got := p.At(nu) / (2 * sinc2(nu))
 			want := r[0]
@@ -219,6 +232,10 @@ func TestPulsesAgainstTimeRecursion(t *testing.T) {
 	rapid.Check(t, func(t *rapid.T) {
 		ch := drawChain(t)
 		c := unroll(ch).remember()
+		const lags, far = 1000, 2520
+		if lingers(c.correlation(c.level, c.level, lags, far)) {
+			t.Skip("the time recursion is too short for this chain")
+		}
 		for _, test := range trains {
 			train := test.train
 			if train.Shapes != nil { // those of the levels that the chain has
@@ -243,7 +260,6 @@ func TestPulsesAgainstTimeRecursion(t *testing.T) {
 				}
 				kinds[k][i] = 1
 			}
-			const lags, far = 1000, 2520
 			nu := rapid.SampledFrom([]float64{0, 0.11, 0.5, 1.7}).Draw(t, "nu")
 			want := 0.0
 			for _, a := range order {
