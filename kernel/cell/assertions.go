@@ -1,9 +1,11 @@
 package cell
 
 import (
+	"fmt"
 	"go/ast"
 	"go/token"
 	"go/types"
+	"reflect"
 	"strconv"
 
 	"golang.org/x/tools/go/ast/astutil"
@@ -69,9 +71,12 @@ func (l *lowering) typeSwitch(s *ast.TypeSwitchStmt) ast.Stmt {
 				add(&ast.IfStmt{If: pos, Cond: &ast.BinaryExpr{X: id(value), OpPos: pos, Op: token.EQL, Y: id("nil")}, Body: set})
 				continue
 			}
-			add(&ast.IfStmt{If: pos, Cond: l.is(pos, value, t), Body: set})
+			add(&ast.IfStmt{If: pos, Cond: l.is(pos, value, l.u.info.TypeOf(x.X), t), Body: set})
 			if len(clause.List) == 1 {
 				bound = &ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}
+				if to := l.u.info.TypeOf(t); to != nil && types.IsInterface(to) {
+					bound = &ast.CallExpr{Fun: l.assertion(pos, t, l.u.info.TypeOf(x.X), to, false), Lparen: pos, Args: []ast.Expr{id(value)}, Rparen: pos}
+				}
 			}
 		}
 		body := clause.Body
@@ -92,16 +97,20 @@ func (l *lowering) typeSwitch(s *ast.TypeSwitchStmt) ast.Stmt {
 }
 
 // is is an expression for whether a variable holds a type.
-func (l *lowering) is(pos token.Pos, value string, t ast.Expr) ast.Expr {
+func (l *lowering) is(pos token.Pos, value string, from types.Type, t ast.Expr) ast.Expr {
 	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
 	ok := l.temp(pos).Name
+	var test ast.Expr = &ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}
+	if to := l.u.info.TypeOf(t); to != nil && types.IsInterface(to) {
+		test = &ast.CallExpr{Fun: l.assertion(pos, t, from, to, true), Lparen: pos, Args: []ast.Expr{id(value)}, Rparen: pos}
+	}
 	lit := &ast.FuncLit{
 		Type: &ast.FuncType{
 			Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos},
 			Results: &ast.FieldList{Opening: pos, List: []*ast.Field{{Type: id("bool")}}, Closing: pos},
 		},
 		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{
-			&ast.AssignStmt{Lhs: []ast.Expr{id("_"), id(ok)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{&ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}}},
+			&ast.AssignStmt{Lhs: []ast.Expr{id("_"), id(ok)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{test}},
 			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{id(ok)}},
 		}, Rbrace: pos},
 	}
@@ -123,60 +132,188 @@ func uses(list []ast.Stmt, name string) bool {
 	return false
 }
 
-// assertedInterface returns the assertion if a statement is v, ok := x.(I) with an interface I.
-func (l *lowering) assertedInterface(s ast.Stmt) (*ast.AssignStmt, *ast.TypeAssertExpr) {
-	a, ok := s.(*ast.AssignStmt)
-	if !ok || len(a.Lhs) != 2 || len(a.Rhs) != 1 {
-		return nil, nil
+// assert turns an assertion to an interface type into a call of a function literal: with two results if it is the right
+// side of v, ok := x.(I), and else with one, which panics. The interpreter panics when nil is asserted to be an interface,
+// and cannot find the methods of a cell's value in an any, so the literal asks for each type of the cells that has them:
+//
+//	func(e any) (I, bool) {
+//		if e == nil { return nil, false }
+//		if c, ok := e.(T); ok { return c, true }
+//		v, ok := e.(I)
+//		return v, ok
+//	}(x)
+func (l *lowering) assert(c *astutil.Cursor, x *ast.TypeAssertExpr) {
+	if x.Type == nil {
+		return // the head of a type switch
 	}
-	x, ok := ast.Unparen(a.Rhs[0]).(*ast.TypeAssertExpr)
-	if !ok || x.Type == nil {
-		return nil, nil
-	}
-	if t := l.u.info.TypeOf(x.Type); t == nil || !types.IsInterface(t) {
-		return nil, nil
-	}
-	return a, x
-}
-
-// guarded returns statements that do an assertion to an interface only if there is something to assert, and changes the
-// statement itself to take what they found.
-func (l *lowering) guarded(a *ast.AssignStmt, x *ast.TypeAssertExpr) []ast.Stmt {
-	pos := a.Pos()
-	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
-	from, value, ok := l.temp(pos).Name, l.temp(pos).Name, l.temp(pos).Name
-	local := func(name string, t ast.Expr) ast.Stmt { return &ast.DeclStmt{Decl: varDecl(pos, name, t)} }
-	a.Rhs = []ast.Expr{id(value), id(ok)}
-	return []ast.Stmt{
-		&ast.AssignStmt{Lhs: []ast.Expr{id(from)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{x.X}},
-		local(value, x.Type), local(ok, id("bool")),
-		&ast.IfStmt{
-			If: pos, Cond: &ast.BinaryExpr{X: id(from), OpPos: pos, Op: token.NEQ, Y: id("nil")},
-			Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{&ast.AssignStmt{
-				Lhs: []ast.Expr{id(value), id(ok)}, TokPos: pos, Tok: token.ASSIGN,
-				Rhs: []ast.Expr{&ast.TypeAssertExpr{X: id(from), Lparen: pos, Type: x.Type, Rparen: pos}},
-			}}, Rbrace: pos},
-		},
-	}
-}
-
-// assertion guards an assertion that stands in a list of statements.
-func (l *lowering) assertion(c *astutil.Cursor, s *ast.AssignStmt) {
-	if a, x := l.assertedInterface(s); a != nil && c.Index() >= 0 {
-		for _, g := range l.guarded(a, x) {
-			c.InsertBefore(g)
-		}
-	}
-}
-
-// ifAssertion guards an assertion in the head of an if, which becomes a block.
-func (l *lowering) ifAssertion(c *astutil.Cursor, s *ast.IfStmt) {
-	a, x := l.assertedInterface(s.Init)
-	if a == nil {
+	to := l.u.info.TypeOf(x.Type)
+	if to == nil || !types.IsInterface(to) {
 		return
 	}
-	block := &ast.BlockStmt{Lbrace: s.Pos(), List: l.guarded(a, x), Rbrace: s.End()}
-	block.List = append(block.List, s)
-	l.hoisted[block] = true
-	c.Replace(block)
+	two := false
+	if a, ok := c.Parent().(*ast.AssignStmt); ok {
+		two = len(a.Lhs) == 2 && len(a.Rhs) == 1
+	}
+	from := l.u.info.TypeOf(x.X)
+	if from == nil {
+		from = types.NewInterfaceType(nil, nil)
+	}
+	call := &ast.CallExpr{Fun: l.assertion(x.Pos(), x.Type, from, to, two), Lparen: x.Pos(), Args: []ast.Expr{x.X}, Rparen: x.End()}
+	l.replace(c, call)
+}
+
+// assertion is the literal of assert.
+func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, two bool) *ast.FuncLit {
+	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
+	e, v, ok := l.temp(pos).Name, l.temp(pos).Name, l.temp(pos).Name
+	found := func(x ast.Expr) []ast.Stmt {
+		r := &ast.ReturnStmt{Return: pos, Results: []ast.Expr{x}}
+		if two {
+			r.Results = append(r.Results, id("true"))
+		}
+		return []ast.Stmt{r}
+	}
+	// try is: if v, ok := e.(t); ok { return v, true }
+	try := func(t ast.Expr) ast.Stmt {
+		return &ast.IfStmt{
+			If: pos, Init: &ast.AssignStmt{Lhs: []ast.Expr{id(v), id(ok)}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{&ast.TypeAssertExpr{X: id(e), Lparen: pos, Type: t, Rparen: pos}}},
+			Cond: id(ok), Body: &ast.BlockStmt{Lbrace: pos, List: found(id(v)), Rbrace: pos},
+		}
+	}
+	inside := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
+	if i, empty := from.Underlying().(*types.Interface); empty && i.Empty() {
+		for _, t := range l.implementers(to) {
+			if x := l.typeExpr(t, pos); x != nil {
+				inside.List = append(inside.List, try(x))
+			}
+		}
+		if !l.ofCompiled(to) {
+			from = nil // no more types to ask for
+		}
+	}
+	if from != nil {
+		inside.List = append(inside.List, try(typ))
+	}
+	body := &ast.BlockStmt{Lbrace: pos, Rbrace: pos, List: []ast.Stmt{
+		&ast.IfStmt{If: pos, Cond: &ast.BinaryExpr{X: id(e), OpPos: pos, Op: token.NEQ, Y: id("nil")}, Body: inside},
+	}}
+	results := []*ast.Field{{Type: typ}}
+	if two {
+		results = append(results, &ast.Field{Type: id("bool")})
+		body.List = append(body.List, &ast.ReturnStmt{Return: pos, Results: []ast.Expr{id("nil"), id("false")}})
+	} else {
+		text := &ast.BasicLit{Kind: token.STRING, ValuePos: pos, Value: strconv.Quote(types.TypeString(to, brief))}
+		body.List = append(body.List,
+			&ast.ExprStmt{X: l.hook("NotA", pos, text, id(e))},
+			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{id("nil")}})
+	}
+	var param ast.Expr = id("any")
+	if from != nil {
+		if t := l.typeExpr(from, pos); t != nil {
+			param = t
+		}
+	}
+	return &ast.FuncLit{
+		Type: &ast.FuncType{
+			Func: pos, Params: &ast.FieldList{Opening: pos, List: []*ast.Field{{Names: []*ast.Ident{id(e)}, Type: param}}, Closing: pos},
+			Results: &ast.FieldList{Opening: pos, List: results, Closing: pos},
+		},
+		Body: body,
+	}
+}
+
+// ofCompiled reports whether an interface is one of a compiled package, which compiled values in an any can have.
+func (l *lowering) ofCompiled(t types.Type) bool {
+	n, ok := types.Unalias(t).(*types.Named)
+	return ok && (n.Obj().Pkg() == nil || n.Obj().Pkg().Path() != "main")
+}
+
+// implementers returns the cells' types that implement an interface: T if its values do, else *T.
+func (l *lowering) implementers(t types.Type) []types.Type {
+	i, ok := t.Underlying().(*types.Interface)
+	if !ok || i.Empty() {
+		return nil
+	}
+	objects := map[string]types.Object{}
+	for name, e := range l.in.names {
+		objects[name] = e.obj
+	}
+	for name, o := range l.u.objects {
+		objects[name] = o
+	}
+	var found []types.Type
+	for _, name := range sorted(objects) {
+		o, ok := objects[name].(*types.TypeName)
+		if !ok || o.IsAlias() || types.IsInterface(o.Type()) {
+			continue
+		}
+		if n, ok := o.Type().(*types.Named); !ok || n.TypeParams().Len() > 0 {
+			continue
+		}
+		if types.Implements(o.Type(), i) {
+			found = append(found, o.Type())
+		}
+		if p := types.NewPointer(o.Type()); types.Implements(p, i) {
+			found = append(found, p)
+		}
+	}
+	return found
+}
+
+// notA is the panic of a failed assertion.
+func notA(to string, v any) {
+	if v == nil {
+		panic(fault{"interface conversion: interface is nil, not " + to})
+	}
+	panic(fault{fmt.Sprintf("interface conversion: %s is not %s: missing method", reflect.TypeOf(v), to)})
+}
+
+// equality compares interface values by what is in them; the interpreter compares its own wrappings.
+func (l *lowering) equality(c *astutil.Cursor, x *ast.BinaryExpr) {
+	if x.Op != token.EQL && x.Op != token.NEQ {
+		return
+	}
+	wrapped := false
+	for _, y := range []ast.Expr{x.X, x.Y} {
+		tv := l.u.info.Types[y]
+		if tv.IsNil() || tv.Type == nil {
+			return
+		}
+		wrapped = wrapped || types.IsInterface(tv.Type)
+	}
+	if !wrapped {
+		return
+	}
+	var y ast.Expr = l.hook("Equal", x.Pos(), x.X, x.Y)
+	if x.Op == token.NEQ {
+		y = &ast.UnaryExpr{OpPos: x.Pos(), Op: token.NOT, X: y}
+	}
+	l.replace(c, y)
+}
+
+// equal is == of two interface values.
+func (in *Interpreter) equal(x, y any) bool {
+	a, b := in.bare(x), in.bare(y)
+	if !a.v.IsValid() || !b.v.IsValid() {
+		return !a.v.IsValid() && !b.v.IsValid()
+	}
+	if a.v.Type() != b.v.Type() || a.t != nil && b.t != nil && !types.Identical(a.t, b.t) {
+		return false
+	}
+	if !a.v.Comparable() {
+		panic(fault{"comparing uncomparable type " + a.typeName()})
+	}
+	return a.v.Equal(b.v)
+}
+
+// bare takes a value out of all that the interpreter has wrapped it in.
+func (in *Interpreter) bare(x any) *shown {
+	s := &shown{in: in, v: reflect.ValueOf(x)}
+	if err, ok := x.(error); ok {
+		if v := in.inside(err); v.IsValid() {
+			s.v = v
+		}
+	}
+	s.resolve()
+	return s
 }

@@ -32,12 +32,12 @@ func (l *lowering) keep(list *[]ast.Stmt, x ast.Expr) ast.Expr {
 }
 
 // parallel turns a, b = x, y into t, u := x, y; a = t; b = u, with the operands of targets evaluated first.
-func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) bool {
+func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
 	if len(s.Lhs) < 2 || len(s.Lhs) != len(s.Rhs) || s.Tok != token.ASSIGN && s.Tok != token.DEFINE {
-		return false
+		return
 	}
 	if s.Tok == token.DEFINE && l.allNew(s) {
-		return false // new variables cannot be seen on the right
+		return // new variables cannot be seen on the right
 	}
 	var list []ast.Stmt
 	for i, x := range s.Lhs {
@@ -49,7 +49,7 @@ func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) bool {
 	if s.Tok == token.DEFINE {
 		list = append(list, s)
 		l.replaceInList(c, list)
-		return true
+		return
 	}
 	for i := range s.Lhs {
 		list = append(list, &ast.AssignStmt{Lhs: s.Lhs[i : i+1], TokPos: s.TokPos, Tok: token.ASSIGN, Rhs: s.Rhs[i : i+1]})
@@ -59,7 +59,6 @@ func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) bool {
 	} else {
 		l.extract(c, s, list)
 	}
-	return true
 }
 
 // extract puts statements where only one may stand: in the head of an if or a for, as a call of a function literal.
@@ -174,19 +173,98 @@ func (l *lowering) keepReceiver(list *[]ast.Stmt, call *ast.CallExpr, f *ast.Sel
 	f.X = l.keep(list, f.X)
 }
 
-// returnStmt receives before it returns: the interpreter cannot do both at once.
-func (l *lowering) returnStmt(c *astutil.Cursor, n *ast.ReturnStmt) {
-	receives := false
-	for _, x := range n.Results {
-		u, ok := ast.Unparen(x).(*ast.UnaryExpr)
-		receives = receives || ok && u.Op == token.ARROW
-	}
-	if !receives || c.Index() < 0 {
+// receive makes a function literal's call of a receive that is part of an expression or of a return: the interpreter can
+// only receive in a statement of its own.
+func (l *lowering) receive(c *astutil.Cursor, n *ast.UnaryExpr) {
+	if n.Op != token.ARROW {
 		return
 	}
-	var list []ast.Stmt
-	for i, x := range n.Results {
-		n.Results[i] = l.keep(&list, x)
+	switch p := c.Parent().(type) {
+	case *ast.ExprStmt, *ast.CommClause:
+		return
+	case *ast.AssignStmt:
+		if len(p.Rhs) == 1 {
+			return
+		}
+	case *ast.ParenExpr:
+		return // in the head of a case; elsewhere the parser's users seldom write it
 	}
-	l.replaceInList(c, append(list, n))
+	t := l.u.info.TypeOf(n)
+	if _, two := t.(*types.Tuple); t == nil || two {
+		return
+	}
+	l.replace(c, l.evaluated(n.Pos(), t, n))
+}
+
+// evaluated is a call of a function literal that evaluates x in a statement of its own.
+func (l *lowering) evaluated(pos token.Pos, t types.Type, x ast.Expr) ast.Expr {
+	id := l.temp(pos)
+	typ := l.typeExpr(t, pos)
+	if typ == nil {
+		return x
+	}
+	call := &ast.CallExpr{Fun: &ast.FuncLit{
+		Type: &ast.FuncType{
+			Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos},
+			Results: &ast.FieldList{Opening: pos, List: []*ast.Field{{Type: typ}}, Closing: pos},
+		},
+		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{
+			&ast.AssignStmt{Lhs: []ast.Expr{id}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{x}},
+			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{&ast.Ident{Name: id.Name, NamePos: pos}}},
+		}, Rbrace: pos},
+	}, Lparen: pos, Rparen: pos}
+	l.synthetic[call] = true
+	return call
+}
+
+// commClause receives into a variable of its own in a select, and assigns that.
+func (l *lowering) commClause(n *ast.CommClause) {
+	a, ok := n.Comm.(*ast.AssignStmt)
+	if !ok {
+		return
+	}
+	a.Rhs[0] = ast.Unparen(a.Rhs[0])
+	if a.Tok != token.ASSIGN {
+		return
+	}
+	as := &ast.AssignStmt{TokPos: a.TokPos, Tok: token.ASSIGN}
+	for i, x := range a.Lhs {
+		if id, ok := x.(*ast.Ident); ok && id.Name == "_" {
+			continue
+		}
+		t := l.temp(x.Pos())
+		as.Lhs, as.Rhs = append(as.Lhs, x), append(as.Rhs, &ast.Ident{Name: t.Name, NamePos: x.Pos()})
+		a.Lhs[i] = t
+	}
+	if len(as.Lhs) == 0 {
+		n.Comm = &ast.ExprStmt{X: a.Rhs[0]}
+		return
+	}
+	a.Tok = token.DEFINE
+	n.Body = append([]ast.Stmt{as}, n.Body...)
+}
+
+// newValue is new(x) with a value x.
+func (l *lowering) newValue(n *ast.CallExpr) ast.Expr {
+	pos := n.Pos()
+	p, ok := l.u.info.TypeOf(n).(*types.Pointer)
+	if !ok {
+		return nil
+	}
+	typ, id := l.typeExpr(p.Elem(), pos), l.temp(pos)
+	if typ == nil {
+		return nil
+	}
+	call := &ast.CallExpr{Fun: &ast.FuncLit{
+		Type: &ast.FuncType{
+			Func: pos, Params: &ast.FieldList{Opening: pos, Closing: pos},
+			Results: &ast.FieldList{Opening: pos, List: []*ast.Field{{Type: &ast.StarExpr{Star: pos, X: typ}}}, Closing: pos},
+		},
+		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{
+			&ast.DeclStmt{Decl: &ast.GenDecl{Tok: token.VAR, TokPos: pos, Specs: []ast.Spec{&ast.ValueSpec{Names: []*ast.Ident{id}, Type: typ, Values: n.Args}}}},
+			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{&ast.UnaryExpr{OpPos: pos, Op: token.AND, X: &ast.Ident{Name: id.Name, NamePos: pos}}}},
+		}, Rbrace: pos},
+	}, Lparen: pos, Rparen: pos}
+	l.synthetic[call] = true
+	return call
 }

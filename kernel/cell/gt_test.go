@@ -34,6 +34,7 @@ func TestGT(t *testing.T) {
 			if err != nil {
 				var e *Error
 				errors.As(err, &e)
+				fmt.Printf("OUT %s %s\n", s.out.stdout.String(), s.out.stderr.String())
 				fmt.Printf("RUNFAIL %s\n%s\n", filepath.Base(f), strings.Join(e.Trace, "\n"))
 			} else {
 				want, _ := os.ReadFile(strings.TrimSuffix(f, ".go") + ".out")

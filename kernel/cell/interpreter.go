@@ -145,6 +145,9 @@ func (in *Interpreter) hooks() interp.Exports {
 			"Typed":    reflect.ValueOf(in.typed),
 			"TypeName": reflect.ValueOf(in.typeName),
 
+			"NotA":      reflect.ValueOf(notA),
+			"Equal":     reflect.ValueOf(in.equal),
+			"Complex":   reflect.ValueOf(func(re, im float64) complex128 { return complex(re, im) }),
 			"Clear":     reflect.ValueOf(func(v any) { reflect.ValueOf(v).Clear() }),
 			"MinInt":    reflect.ValueOf(least[int64]),
 			"MaxInt":    reflect.ValueOf(most[int64]),

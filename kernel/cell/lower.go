@@ -461,16 +461,18 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		}
 	case *ast.TypeSwitchStmt:
 		c.Replace(l.typeSwitch(n))
-	case *ast.IfStmt:
-		l.ifAssertion(c, n)
+	case *ast.TypeAssertExpr:
+		l.assert(c, n)
+	case *ast.BinaryExpr:
+		l.equality(c, n)
+	case *ast.UnaryExpr:
+		l.receive(c, n)
+	case *ast.CommClause:
+		l.commClause(n)
 	case *ast.AssignStmt:
-		if !l.parallel(c, n) {
-			l.assertion(c, n)
-		}
+		l.parallel(c, n)
 	case *ast.LabeledStmt:
 		l.label(c, n)
-	case *ast.ReturnStmt:
-		l.returnStmt(c, n)
 	}
 	return true
 }
@@ -489,6 +491,10 @@ func (l *lowering) builtin(n *ast.CallExpr) ast.Expr {
 	case "recover":
 		l.synthetic[n] = true
 		return l.hook("Recover", n.Pos(), n)
+	case "new":
+		if tv := l.u.info.Types[n.Args[0]]; tv.IsValue() {
+			return l.newValue(n)
+		}
 	case "clear":
 		return l.hook("Clear", n.Pos(), n.Args...)
 	case "min", "max":

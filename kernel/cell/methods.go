@@ -106,15 +106,7 @@ func (l *lowering) methodCall(call *ast.CallExpr) {
 		}
 	}
 	pos := s.Sel.Pos()
-	recv, t := l.path(s.X, sel.Recv(), sel.Index()[:len(sel.Index())-1])
-	_, isPtr := types.Unalias(t).(*types.Pointer)
-	_, wantPtr := fn.Signature().Recv().Type().(*types.Pointer)
-	switch {
-	case isPtr && !wantPtr:
-		recv = &ast.StarExpr{Star: s.X.Pos(), X: recv}
-	case !isPtr && wantPtr:
-		recv = &ast.UnaryExpr{OpPos: s.X.Pos(), Op: token.AND, X: recv}
-	}
+	recv := l.receiver(s.X, sel, fn)
 	call.Fun = &ast.Ident{Name: l.methodSlot(fn), NamePos: pos}
 	call.Args = append([]ast.Expr{recv}, call.Args...)
 }
@@ -129,11 +121,51 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 	if !ok || types.IsInterface(fn.Signature().Recv().Type()) || l.methodSlot(fn) == "" {
 		return
 	}
-	if len(sel.Index()) > 1 || !types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
-		l.fail(s.Pos(), "the method expression of a promoted method or of a pointer's method with a value receiver is not supported in cells; write a function")
+	if len(sel.Index()) == 1 && types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
+		l.replace(c, &ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
 		return
 	}
-	l.replace(c, &ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
+	// A promoted method, or a pointer's method with a value receiver: func(r R, ...) { return r.M(...) }
+	pos := s.Pos()
+	sig, ok := sel.Type().(*types.Signature)
+	if !ok {
+		return
+	}
+	t, ok := l.typeExpr(sig, pos).(*ast.FuncType)
+	if !ok {
+		return
+	}
+	call := &ast.CallExpr{Lparen: pos, Rparen: pos}
+	for i, f := range t.Params.List {
+		name := fmt.Sprintf("%sa%d", kernel, i)
+		f.Names = []*ast.Ident{{Name: name, NamePos: pos}}
+		call.Args = append(call.Args, &ast.Ident{Name: name, NamePos: pos})
+	}
+	if sig.Variadic() {
+		call.Ellipsis = pos
+	}
+	recv := l.receiver(call.Args[0], sel, fn)
+	call.Fun, call.Args[0] = &ast.Ident{Name: l.methodSlot(fn), NamePos: pos}, recv
+	var body ast.Stmt = &ast.ExprStmt{X: call}
+	if sig.Results().Len() > 0 {
+		body = &ast.ReturnStmt{Return: pos, Results: []ast.Expr{call}}
+	}
+	l.replace(c, &ast.FuncLit{Type: t, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{body}, Rbrace: pos}})
+}
+
+// receiver is the receiver that a method's function takes, from the operand of a selector.
+func (l *lowering) receiver(x ast.Expr, sel *types.Selection, fn *types.Func) ast.Expr {
+	pos := x.Pos()
+	recv, t := l.path(x, sel.Recv(), sel.Index()[:len(sel.Index())-1])
+	_, isPtr := types.Unalias(t).(*types.Pointer)
+	_, wantPtr := fn.Signature().Recv().Type().(*types.Pointer)
+	switch {
+	case isPtr && !wantPtr:
+		return &ast.StarExpr{Star: pos, X: recv}
+	case !isPtr && wantPtr:
+		return &ast.UnaryExpr{OpPos: pos, Op: token.AND, X: recv}
+	}
+	return recv
 }
 
 // path follows embedded fields.

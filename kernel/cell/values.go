@@ -50,8 +50,8 @@ func (l *lowering) constant(t types.Type, v constant.Value, old ast.Expr) ast.Ex
 		lit = float(pos, v, b.Kind() == types.Float32)
 	case info&types.IsComplex != 0:
 		f32 := b.Kind() == types.Complex64
-		lit = &ast.CallExpr{Fun: &ast.Ident{Name: "complex", NamePos: pos}, Lparen: pos, Rparen: pos,
-			Args: []ast.Expr{float(pos, constant.Real(v), f32), float(pos, constant.Imag(v), f32)}}
+		// A call of compiled code: the interpreter's own complex constants are wrong in some places.
+		lit = l.hook("Complex", pos, float(pos, constant.Real(v), f32), float(pos, constant.Imag(v), f32))
 		if b.Kind() == types.UntypedComplex {
 			t = types.Typ[types.Complex128]
 		}
