@@ -3,6 +3,7 @@ package spectrum
 import (
 	"context"
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/floats"
 )
@@ -48,17 +49,12 @@ func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, er
 // arnoldi returns an orthonormal basis of the smallest subspace that holds the functions and is mapped into itself by
 // K, and the matrix of K on it; nil if it has more than rank dimensions.
 //
-// A direction is new if what the others leave of it is more than rounding, and if it can still reach the result: weight
-// is the product of the remainders on the way to it.
+// A direction is new if what the others leave of it is more than rounding. How little of it is left says nothing about
+// what it does: slow chains make much of small steps.
 func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int) (basis, h [][]float64, err error) {
-	scale := 0.0
-	for _, f := range functions {
-		scale = max(scale, floats.Norm(f, 2))
-	}
-	var weight []float64
 	// orthogonalise takes from v its parts along the basis, twice for full precision, and makes the rest a new
 	// direction if it is one. It returns the coordinates of v.
-	orthogonalise := func(v []float64, reach float64) []float64 {
+	orthogonalise := func(v []float64) []float64 {
 		size := floats.Norm(v, 2)
 		c := make([]float64, len(basis), len(basis)+1)
 		for range 2 {
@@ -69,17 +65,16 @@ func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int)
 			}
 		}
 		left := floats.Norm(v, 2)
-		if left <= 1e-14*size || reach*left <= 1e-19*scale {
+		if left <= 1e-14*size {
 			return c
 		}
 		floats.Scale(1/left, v)
 		basis = append(basis, v)
-		weight = append(weight, reach*left)
 		return append(c, left)
 	}
 	for _, f := range functions {
 		if f != nil {
-			orthogonalise(append([]float64(nil), f...), 1)
+			orthogonalise(slices.Clone(f))
 		}
 	}
 	var columns [][]float64
@@ -92,7 +87,7 @@ func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int)
 		}
 		v := make([]float64, len(a.next))
 		a.step1.apply(v, basis[n], true)
-		columns = append(columns, orthogonalise(v, weight[n]))
+		columns = append(columns, orthogonalise(v))
 		a.work += float64(4 * len(basis) * len(v))
 	}
 	h = vectors(len(basis), len(basis))
