@@ -37,10 +37,11 @@ const (
 //	N R(N (q+1) + k - i) += u_i . K^q f_k               for q = 0, 1, ... and all positions i, k.
 //
 // The maximum of |K^q f| never grows, and the sum ends when what is left is below the last digits. If it does not end
-// soon, the functions K^q f by then live on a few slow directions, and a resolvent on these takes the rest.
+// soon, a process of small rank is a ratio of short series; otherwise the functions K^q f by then live on a few slow
+// directions, and a resolvent on these takes the rest.
 func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 	a := newAutocorr(p)
-	check := 32
+	check, ratioAt := 32, 24
 	for q := 0; ; q++ {
 		if ctx.Err() != nil {
 			return nil, context.Cause(ctx)
@@ -49,12 +50,14 @@ func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 		if lags >= first && recentred(q) {
 			bound := a.bound()
 			if bound*float64(q+8) <= 1e-16*a.power() {
-				form := newForm(p.width, a.trim(), nil)
-				num, den, err := a.ratio(ctx, form.lags[0])
-				if den != nil {
-					form.even[0], form.under, form.length = newSeries(num), newSeries(den), p.length
+				return newForm(p.width, a.trim(), nil), nil
+			}
+			if p.width == 1 && lags >= ratioAt {
+				f, need, err := a.ratio(ctx, lags)
+				if err != nil || f != nil {
+					return f, err
 				}
-				return form, err
+				ratioAt = need
 			}
 			if lags >= check {
 				check = 2 * lags

@@ -11,50 +11,44 @@ import (
 //
 //	S = [sum of T(l) cos lt] / [sum of G(d) cos(d N t)],   T(l) = sum over d of G(d) R(l - N d),
 //
-// and T(l) = 0 for l >= N (r+1). The ratio replaces the lags where it is shorter and T proves to vanish: then no digits
-// were lost on the way.
+// and T(l) = 0 for l >= N (r+1). The ratio is used where T is seen to vanish, over as many lags as it has itself: then no
+// digits were lost on the way.
 const (
 	longestRatio = 16    // rank up to which the coefficients of D are good for use
-	ratioError   = 1e-13 // of the mean power that the ratio may be wrong by
+	ratioError   = 1e-12 // of the mean power that the ratio may be wrong by
 )
 
-// ratio turns the lags of a finished sum into a ratio; it returns nil where that does not pay or would lose digits.
-func (a *autocorr) ratio(ctx context.Context, lags []float64) (numerator, denominator []float64, err error) {
-	n := a.p.length
-	most := min(longestRatio, (len(lags)/2-16)/(n+1))
-	if a.p.width != 1 || most < 1 {
-		return nil, nil, nil
-	}
-	basis, h, err := a.arnoldi(ctx, a.first, most)
+// ratio gives the form as a ratio, from so many lags. It returns nil, and the number of lags at which to try again, if it
+// has to see more of them; nil and a number that is never reached if the rank is too large or digits would be lost.
+func (a *autocorr) ratio(ctx context.Context, lags int) (*form, int, error) {
+	const never = math.MaxInt
+	basis, h, err := a.arnoldi(ctx, a.first, longestRatio)
 	if err != nil || basis == nil {
-		return nil, nil, err
+		return nil, never, err
+	}
+	n, r := a.p.length, len(h)
+	if need := n*(2*r+2) + 8; lags < need {
+		return nil, need, nil
 	}
 	if err := hessenberg(ctx, h); err != nil {
-		return nil, nil, err
+		return nil, never, err
 	}
 	d := characteristic(h)
-	r := len(h)
 	g := make([]float64, r+1)
 	for k := range g {
 		for i := k; i <= r; i++ {
 			g[k] += d[i] * d[i-k]
 		}
 	}
-	at := func(l int) float64 {
-		if l < 0 {
-			l = -l
-		}
-		if l >= len(lags) {
-			return 0
-		}
-		return lags[l]
-	}
+	// R is complete below lags, so T is below lags - N r.
+	known := a.lags[0]
 	t := make([]float64, n*(r+1))
 	size, left := 0.0, 0.0
-	for l := range len(lags) + n*r {
-		v := g[0] * at(l)
+	for l := range lags - n*r {
+		v := g[0] * known[l]
 		for k := 1; k <= r; k++ {
-			v += g[k] * (at(l-n*k) + at(l+n*k))
+			before := l - n*k
+			v += g[k] * (known[max(before, -before)] + known[l+n*k])
 		}
 		if l < len(t) {
 			t[l] = v
@@ -69,16 +63,18 @@ func (a *autocorr) ratio(ctx context.Context, lags []float64) (numerator, denomi
 	for k := 1; k < len(g); k++ {
 		g[k] *= 2
 	}
+	under := newSeries(g)
 	least := math.Inf(1)
-	den := newSeries(g)
 	const grid = 64
 	for k := range grid + 1 {
-		least = min(least, den.even(newAngle(0.5*float64(k)/grid)))
+		least = min(least, under.even(newAngle(0.5*float64(k)/grid)))
 	}
-	if 2*left+1e-15*size > ratioError*lags[0]*least {
-		return nil, nil, nil
+	if left+1e-15*size > ratioError*known[0]*least {
+		return nil, never, nil
 	}
-	return t, g, nil
+	f := newForm(1, a.lags, nil)
+	f.even[0], f.under, f.length = newSeries(t), under, n
+	return f, 0, nil
 }
 
 // characteristic gives the coefficients of det(I - y H) for an upper Hessenberg H, from those of its leading blocks
