@@ -20,11 +20,15 @@ import (
 // A fake interpreter runs Go functions of the test in place of cells.
 type fake struct {
 	cells map[string]func(ctx context.Context, out cell.Output) (*plotting.Bundle, error)
-	ids   []string // cell IDs that Run was given
+
+	mu  sync.Mutex
+	ids []string // cell IDs that Run was given; guarded by mu
 }
 
 func (f *fake) Run(ctx context.Context, n int, code, id string, out cell.Output) (*plotting.Bundle, error) {
+	f.mu.Lock()
 	f.ids = append(f.ids, id)
+	f.mu.Unlock()
 	run, ok := f.cells[code]
 	if !ok {
 		return nil, fmt.Errorf("no cell %q in this test", code)

@@ -20,5 +20,5 @@
 // that outlive their cell go on writing under it. What is written to the standard output and error of the process
 // (os.Stdout, package log, compiled code) belongs to the cell that runs or ran last.
 //
-// Of one cell, [TextLimit] bytes of text are sent. What comes after that is only in a file, and the cell says in which.
+// Of one cell, 64 MB of text are sent. What comes after that is only in a file, and the cell says in which.
 package session

@@ -19,8 +19,8 @@ const (
 	collectSize = 64 << 10              // bytes at which it does not
 )
 
-// TextLimit is how many bytes of text one cell may send to the front ends. All of it is in a file when there is more.
-const TextLimit = 64 << 20
+// textLimit is how many bytes of text one cell may send to the front ends. All of it is in a file when there is more.
+const textLimit = 64 << 20
 
 // An output is what one cell puts out, under the request that started it. It implements [cell.Output].
 type output struct {
@@ -82,11 +82,11 @@ func (o *output) write(which int, p []byte) {
 
 // admit counts p and returns what of it may be sent, with mu held.
 func (o *output) admit(p []byte) []byte {
-	over := o.sent > TextLimit
-	room := max(TextLimit-o.sent, 0)
+	over := o.sent > textLimit
+	room := max(textLimit-o.sent, 0)
 	o.sent += len(p)
 	o.record.add(p)
-	if over || o.sent <= TextLimit {
+	if over || o.sent <= textLimit {
 		return p[:min(len(p), room)]
 	}
 	// p crosses the line.
@@ -94,7 +94,7 @@ func (o *output) admit(p []byte) []byte {
 	if path := o.record.keep(); path != "" {
 		where = "is in " + path
 	}
-	return fmt.Appendf(p[:room:room], "\n[linewright: this cell has put out %d MB of text; the rest is not shown here, the whole %s]\n", TextLimit>>20, where)
+	return fmt.Appendf(p[:room:room], "\n[linewright: this cell has put out %d MB of text; the rest is not shown here, the whole %s]\n", textLimit>>20, where)
 }
 
 // flush sends the text that waits, with mu held. The beginning of a character whose rest has not come waits on, unless
@@ -157,9 +157,9 @@ func (o *output) finish() {
 	o.mu.Lock()
 	defer o.mu.Unlock()
 	o.flush(true)
-	if o.sent > TextLimit {
+	if o.sent > textLimit {
 		const format = "[linewright: %d bytes of text in all, %d not shown]\n"
-		note := fmt.Appendf(nil, format, o.sent, o.sent-TextLimit)
+		note := fmt.Appendf(nil, format, o.sent, o.sent-textLimit)
 		o.text[1] = append(o.text[1], note...)
 		o.flush(true)
 	}

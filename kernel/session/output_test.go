@@ -175,19 +175,19 @@ func TestAppendText(t *testing.T) {
 func TestTextLimit(t *testing.T) {
 	t.Setenv("TMPDIR", t.TempDir())
 	chunk := bytes.Repeat([]byte("0123456789abcde\n"), 1<<16) // 1 MB
-	const chunks = TextLimit>>20 + 3
+	const chunks = textLimit>>20 + 3
 	output := run(t, func(out cell.Output) {
 		for range chunks {
 			out.Stream("stdout", chunk)
 		}
 	})
 	sent := text(t, output, "stdout")
-	if len(sent) < TextLimit || len(sent) > TextLimit+1000 {
-		t.Errorf("%d bytes sent, want %d and a note", len(sent), TextLimit)
+	if len(sent) < textLimit || len(sent) > textLimit+1000 {
+		t.Errorf("%d bytes sent, want %d and a note", len(sent), textLimit)
 	}
-	path := regexp.MustCompile(`the whole is in (\S+)\]`).FindStringSubmatch(sent[TextLimit:])
+	path := regexp.MustCompile(`the whole is in (\S+)\]`).FindStringSubmatch(sent[textLimit:])
 	if path == nil {
-		t.Fatalf("the note names no file: %q", sent[TextLimit:])
+		t.Fatalf("the note names no file: %q", sent[textLimit:])
 	}
 	if whole, err := os.ReadFile(path[1]); err != nil || !bytes.Equal(whole, bytes.Repeat(chunk, chunks)) {
 		t.Errorf("the file has %d bytes (%v), want %d", len(whole), err, chunks<<20)

@@ -70,7 +70,8 @@ type door struct {
 	net.Listener
 	kind       zmq4.SocketType
 	limits     limits
-	subscribed func()                         // a peer's first subscription has taken effect
+	subscribed func(connection any)           // a peer's first subscription has taken effect
+	left       func(connection any)           // a peer is gone
 	refused    func(peer net.Addr, why error) // a peer was sent away
 
 	ready  chan net.Conn
@@ -150,8 +151,9 @@ func (d *door) admit(c net.Conn) {
 
 func (d *door) forget(p *peer) {
 	d.mu.Lock()
-	defer d.mu.Unlock()
 	delete(d.peers, p)
+	d.mu.Unlock()
+	d.left(p)
 }
 
 // Accept implements net.Listener for zmq4.

@@ -17,7 +17,7 @@ const (
 // messages of its first request would often be published before it could hear them, and it would wait for ever.
 //
 // Nothing on the wire says which subscription belongs to which client. A new client takes the oldest fresh subscription
-// that no other has taken. Only its own requests are held.
+// that no other has taken, and one that was held in vain takes the next that comes. Only its own requests are held.
 type lobby struct {
 	out *Queue[*Message]
 
@@ -25,7 +25,13 @@ type lobby struct {
 	known map[string]bool       // clients let through; guarded by mu
 	held  map[string][]*Message // guarded by mu
 	line  []string              // clients held, in their order; guarded by mu
-	fresh []time.Time           // subscriptions that no client has taken, oldest first; guarded by mu
+	fresh []subscription        // that no client has taken, oldest first; guarded by mu
+	vain  []time.Time           // when clients were let through without one, oldest first; guarded by mu
+}
+
+type subscription struct {
+	of any // the connection
+	at time.Time
 }
 
 func newLobby(out *Queue[*Message]) *lobby {
@@ -47,7 +53,7 @@ func (l *lobby) put(m *Message) {
 	}
 	l.held[client] = []*Message{m}
 	l.line = append(l.line, client)
-	for len(l.fresh) > 0 && time.Since(l.fresh[0]) > freshFor {
+	for len(l.fresh) > 0 && time.Since(l.fresh[0].at) > freshFor {
 		l.fresh = l.fresh[1:]
 	}
 	if len(l.fresh) > 0 {
@@ -58,29 +64,45 @@ func (l *lobby) put(m *Message) {
 	time.AfterFunc(longestHold, func() {
 		l.mu.Lock()
 		defer l.mu.Unlock()
-		l.release(client)
+		if l.release(client) {
+			l.vain = append(l.vain, time.Now())
+		}
 	})
 }
 
-// subscribed gives a new subscription to the client that has waited longest.
-func (l *lobby) subscribed() {
+// subscribed gives the first subscription of a connection to the client that has waited longest.
+func (l *lobby) subscribed(connection any) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
 	if len(l.line) > 0 {
 		l.release(l.line[0])
 		return
 	}
+	for len(l.vain) > 0 {
+		late := time.Since(l.vain[0])
+		l.vain = l.vain[1:]
+		if late <= freshFor {
+			return
+		}
+	}
 	if len(l.fresh) == maxKnown {
 		l.fresh = l.fresh[1:]
 	}
-	l.fresh = append(l.fresh, time.Now())
+	l.fresh = append(l.fresh, subscription{connection, time.Now()})
 }
 
-// release lets a client through, with mu held; twice does no harm.
-func (l *lobby) release(client string) {
+// left forgets the subscription of a connection that is closed.
+func (l *lobby) left(connection any) {
+	l.mu.Lock()
+	defer l.mu.Unlock()
+	l.fresh = slices.DeleteFunc(l.fresh, func(s subscription) bool { return s.of == connection })
+}
+
+// release lets a client through, with mu held, and reports whether it was held.
+func (l *lobby) release(client string) bool {
 	held, ok := l.held[client]
 	if !ok {
-		return
+		return false
 	}
 	l.out.Put(held...)
 	delete(l.held, client)
@@ -89,4 +111,5 @@ func (l *lobby) release(client string) {
 		clear(l.known) // the others are held once more, if they come back
 	}
 	l.known[client] = true
+	return true
 }

@@ -182,8 +182,10 @@ func TestNewClientHearsItsFirstStatus(t *testing.T) {
 		p.send(signed(t, s, `{}`)) // before the subscriber has so much as greeted
 		sub.send(greeting, ready(zmq4.Sub, ""), wireFrame(0, "\x01"))
 		sub.welcome()
-		if busy := sub.message(); !strings.Contains(string(busy[len(busy)-1]), "busy") {
-			t.Fatalf("client %d heard %q first", i, busy)
+		for _, want := range []string{"busy", "idle"} {
+			if m := sub.message(); !strings.Contains(string(m[len(m)-1]), want) {
+				t.Fatalf("client %d heard %q, want %s", i, m, want)
+			}
 		}
 		p.Close()
 		sub.Close()
@@ -206,16 +208,18 @@ func TestLobby(t *testing.T) {
 	if got := passed(); got != "" {
 		t.Fatalf("let through without a subscription: %s", got)
 	}
-	l.subscribed()
+	l.subscribed(1)
 	if got := passed(); got != "aa" {
 		t.Errorf("first subscription lets %q through, want a's two", got)
 	}
 	l.put(from("a"))
-	l.subscribed()
+	l.subscribed(2)
 	if got := passed(); got != "ab" {
 		t.Errorf("%q, want a (known) and b (second subscription)", got)
 	}
-	l.subscribed()
+	l.subscribed(3)
+	l.subscribed(4)
+	l.left(4)
 	l.put(from("c"))
 	l.put(from("d"))
 	if got := passed(); got != "c" {
@@ -225,6 +229,11 @@ func TestLobby(t *testing.T) {
 	defer cancel()
 	if m, ok := out.Get(ctx); !ok || m.ID != "d" {
 		t.Error("a client without a subscription is held for ever")
+	}
+	l.subscribed(5) // d's, which came late
+	l.put(from("e"))
+	if got := passed(); got != "" {
+		t.Errorf("%q is let through on another's subscription", got)
 	}
 }
 

@@ -35,7 +35,7 @@ func (p *peer) Read(b []byte) (int, error) {
 		// zmq4 comes back for more only after it has dealt with what it read before.
 		if p.subscribed && !p.announced {
 			p.announced = true
-			p.door.subscribed()
+			p.door.subscribed(p)
 		}
 		if err := p.next(); err != nil {
 			if !errors.Is(err, io.EOF) && !errors.Is(err, net.ErrClosed) {

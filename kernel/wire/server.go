@@ -38,7 +38,7 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 	}
 	lobby := newLobby(s.inbox[Shell])
 	for _, ch := range channels { // all of them before anybody is let in
-		if err := s.open(ch, lobby.subscribed); err != nil {
+		if err := s.open(ch, lobby); err != nil {
 			s.Close()
 			return nil, fmt.Errorf("wire: cannot open the %s channel: %w", ch, err)
 		}
@@ -57,20 +57,23 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 }
 
 // open starts to listen.
-func (s *Server) open(ch Channel, subscribed func()) error {
-	kind, l := zmq4.Router, requestLimits
+func (s *Server) open(ch Channel, l *lobby) error {
+	kind, limits := zmq4.Router, requestLimits
 	switch ch {
 	case IOPub:
-		kind, l = zmq4.Pub, broadcastLimits
+		kind, limits = zmq4.Pub, broadcastLimits
 	case Heartbeat: // a router echoes its clients side by side; a replier would wait for one that is lost
-		l = heartbeatLimits
+		limits = heartbeatLimits
 	}
 	network, address := s.at.address(ch)
-	d, err := openDoor(network, address, kind, l)
+	d, err := openDoor(network, address, kind, limits)
 	if err != nil {
 		return err
 	}
-	d.subscribed = subscribed
+	d.subscribed, d.left = func(any) {}, func(any) {}
+	if ch == IOPub {
+		d.subscribed, d.left = l.subscribed, l.left
+	}
 	d.refused = func(peer net.Addr, why error) {
 		s.log.warn("connection dropped", "channel", ch.String(), "peer", peer.String(), "why", why.Error())
 	}
