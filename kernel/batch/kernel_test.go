@@ -309,7 +309,7 @@ func TestKernelDies(t *testing.T) {
 	}
 	n = notebookOf(t, "import \"sync\"\nvar mu sync.Mutex\nmu.Unlock()")
 	_, err = n.Execute(t.Context(), under(t, "real"))
-	if want := "cell 1: the kernel died (exit status 2): fatal error of the Go runtime in internal/sync.(*Mutex).unlockSlow"; err == nil || err.Error() != want {
+	if want := "cell 1: the kernel died (exit status 2): fatal error: sync: unlock of unlocked mutex"; err == nil || err.Error() != want {
 		t.Errorf("%v, want %s", err, want)
 	}
 }

@@ -303,26 +303,8 @@ func (p *process) reason() string {
 	if err != nil {
 		return p.log.last()
 	}
-	return crashReason(strings.TrimSpace(string(crash)))
-}
-
-// crashReason returns what a Go program's crash report says first. Of a fatal error of the runtime it has the stack
-// only: then that is the function which failed.
-func crashReason(report string) string {
-	first, stack, _ := strings.Cut(report, "\n")
-	if !strings.HasPrefix(first, "goroutine ") {
-		return first
-	}
-	for l := range strings.Lines(stack) {
-		name, _, isCall := strings.Cut(l, "(")
-		if strings.HasPrefix(l, "\t") || strings.HasSuffix(name, ".throw") || strings.HasSuffix(name, ".fatal") {
-			continue
-		}
-		if isCall {
-			return "fatal error of the Go runtime in " + strings.TrimSpace(l[:strings.LastIndexByte(l, '(')])
-		}
-	}
-	return "fatal error of the Go runtime"
+	first, _, _ := strings.Cut(strings.TrimSpace(string(crash)), "\n") // stacks follow
+	return first
 }
 
 // close ends the kernel, when it does not end by itself in time, and removes its traces.

@@ -73,7 +73,7 @@ func progressLine(number, total int, c *Cell, took time.Duration) string {
 	return fmt.Sprintf("[%*d/%d] %-*s %7.2f s", len(fmt.Sprint(total)), number, total, titleWidth, string(title), took.Seconds())
 }
 
-// firstLine returns the first line of a cell that is code, or its first comment where it has no code.
+// firstLine returns the line by which a reader knows a cell: the first that is code and no import, or the first at all.
 func firstLine(source string) string {
 	first := ""
 	for l := range strings.Lines(source) {
@@ -81,7 +81,7 @@ func firstLine(source string) string {
 		if l == "" {
 			continue
 		}
-		if !strings.HasPrefix(l, "//") {
+		if !strings.HasPrefix(l, "//") && !strings.HasPrefix(l, "import ") {
 			return l
 		}
 		if first == "" {

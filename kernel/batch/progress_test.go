@@ -8,7 +8,7 @@ import (
 )
 
 func TestProgress(t *testing.T) {
-	cell := &Cell{Source: "// the code\n\n  ami  :=\tlinecode.AMI()\nami"}
+	cell := &Cell{Source: "// the code\nimport \"os\"\n\n  ami  :=\tlinecode.AMI()\nami"}
 	long := &Cell{Source: strings.Repeat("ä", 60)}
 	comment := &Cell{Source: "\n// only a comment\n"}
 	var b strings.Builder
