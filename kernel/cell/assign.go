@@ -4,6 +4,7 @@ import (
 	"go/ast"
 	"go/token"
 	"go/types"
+	"slices"
 
 	"golang.org/x/tools/go/ast/astutil"
 )
@@ -33,6 +34,10 @@ func (l *lowering) keep(list *[]ast.Stmt, x ast.Expr) ast.Expr {
 
 // parallel turns a, b = x, y into t, u := x, y; a = t; b = u, with the operands of targets evaluated first.
 func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
+	if len(s.Rhs) == 1 && len(s.Lhs) >= 2 && s.Tok == token.ASSIGN {
+		l.several(c, s)
+		return
+	}
 	if len(s.Lhs) < 2 || len(s.Lhs) != len(s.Rhs) || s.Tok != token.ASSIGN && s.Tok != token.DEFINE {
 		return
 	}
@@ -54,6 +59,30 @@ func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
 	for i := range s.Lhs {
 		list = append(list, &ast.AssignStmt{Lhs: s.Lhs[i : i+1], TokPos: s.TokPos, Tok: token.ASSIGN, Rhs: s.Rhs[i : i+1]})
 	}
+	if c.Index() >= 0 {
+		l.replaceInList(c, list)
+	} else {
+		l.extract(c, s, list)
+	}
+}
+
+// several gives the values of one expression to targets that are no plain variables by way of variables.
+func (l *lowering) several(c *astutil.Cursor, s *ast.AssignStmt) {
+	if !slices.ContainsFunc(s.Lhs, func(x ast.Expr) bool { _, ok := x.(*ast.Ident); return !ok }) {
+		return
+	}
+	var list, after []ast.Stmt
+	for i, x := range s.Lhs {
+		if id, ok := x.(*ast.Ident); ok && id.Name == "_" {
+			continue
+		}
+		x = l.target(&list, x)
+		t := l.temp(x.Pos())
+		s.Lhs[i] = t
+		after = append(after, &ast.AssignStmt{Lhs: []ast.Expr{x}, TokPos: s.TokPos, Tok: token.ASSIGN, Rhs: []ast.Expr{&ast.Ident{Name: t.Name, NamePos: x.Pos()}}})
+	}
+	s.Tok = token.DEFINE
+	list = append(append(list, s), after...)
 	if c.Index() >= 0 {
 		l.replaceInList(c, list)
 	} else {
@@ -183,7 +212,7 @@ func (l *lowering) receive(c *astutil.Cursor, n *ast.UnaryExpr) {
 	case *ast.ExprStmt, *ast.CommClause:
 		return
 	case *ast.AssignStmt:
-		if len(p.Rhs) == 1 {
+		if _, ok := p.Lhs[0].(*ast.Ident); len(p.Lhs) == 2 || len(p.Rhs) == 1 && ok {
 			return
 		}
 	case *ast.ParenExpr:

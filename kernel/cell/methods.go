@@ -118,14 +118,19 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 		return
 	}
 	fn, ok := sel.Obj().(*types.Func)
-	if !ok || types.IsInterface(fn.Signature().Recv().Type()) || l.methodSlot(fn) == "" {
+	if !ok {
 		return
 	}
-	if len(sel.Index()) == 1 && types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
-		l.replace(c, &ast.Ident{Name: l.methodSlot(fn), NamePos: s.Pos()})
+	slot := ""
+	if !types.IsInterface(fn.Signature().Recv().Type()) {
+		slot = l.methodSlot(fn)
+	}
+	if slot != "" && len(sel.Index()) == 1 && types.Identical(sel.Recv(), fn.Signature().Recv().Type()) {
+		l.replace(c, &ast.Ident{Name: slot, NamePos: s.Pos()})
 		return
 	}
-	// A promoted method, or a pointer's method with a value receiver: func(r R, ...) { return r.M(...) }
+	// A method of a compiled type or an interface, a promoted one, or a pointer's with a value receiver:
+	// func(r R, ...) { return r.M(...) }
 	pos := s.Pos()
 	sig, ok := sel.Type().(*types.Signature)
 	if !ok {
@@ -144,8 +149,11 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 	if sig.Variadic() {
 		call.Ellipsis = pos
 	}
-	recv := l.receiver(call.Args[0], sel, fn)
-	call.Fun, call.Args[0] = &ast.Ident{Name: l.methodSlot(fn), NamePos: pos}, recv
+	if slot != "" {
+		call.Fun, call.Args[0] = &ast.Ident{Name: slot, NamePos: pos}, l.receiver(call.Args[0], sel, fn)
+	} else {
+		call.Fun, call.Args = &ast.SelectorExpr{X: call.Args[0], Sel: &ast.Ident{Name: fn.Name(), NamePos: pos}}, call.Args[1:]
+	}
 	var body ast.Stmt = &ast.ExprStmt{X: call}
 	if sig.Results().Len() > 0 {
 		body = &ast.ReturnStmt{Return: pos, Results: []ast.Expr{call}}
