@@ -216,7 +216,7 @@ func (a *autocorr) resolve(ctx context.Context, q int, bound float64) (*resolven
 	return newResolvent(ctx, a, q, rank)
 }
 
-// A sparse is the matrix K of one step on functions of the state, edges of the same ends added up.
+// A sparse is the matrix K of one step on functions of the state.
 type sparse struct {
 	p    *process
 	head []int32
@@ -229,19 +229,10 @@ type sparse struct {
 func newSparse(p *process) sparse {
 	n := p.machine.states
 	k := sparse{p: p, head: make([]int32, n+1), mean: make([]float64, p.period), work: make([]float64, n)}
-	at := make([]int32, n) // 1 + place of a target in the row at hand
 	for s := range n {
-		lo := len(k.to)
 		to, prob := p.graph.Row(s)
-		for i, t := range to {
-			if at[t] > int32(lo) {
-				k.v[at[t]-1] += prob[i]
-				continue
-			}
-			k.to = append(k.to, t)
-			k.v = append(k.v, prob[i])
-			at[t] = int32(len(k.to))
-		}
+		k.to = append(k.to, to...)
+		k.v = append(k.v, prob...)
 		k.head[s+1] = int32(len(k.to))
 	}
 	return k

@@ -7,13 +7,6 @@ import (
 	"linewright/builtins/internal/markov"
 )
 
-func (m *machine) graph() *markov.Graph {
-	return markov.New(m.states, len(m.edges), func(i int) (from, to int, p float64) {
-		e := &m.edges[i]
-		return int(e.from), int(e.to), e.p
-	})
-}
-
 // closed returns the classes of states that the data may end in, each as a machine of its own, and the probability of
 // each. States that are left for ever do not count: they have no part in a stationary average.
 func (m *machine) closed(ctx context.Context) ([]*machine, []float64, error) {

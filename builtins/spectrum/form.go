@@ -77,7 +77,7 @@ func (f *form) raise(t angle) float64 {
 func (f *form) factor(t angle) float64 {
 	factor := f.raise(t)
 	if f.under.a != nil {
-		factor /= f.under.even(t.times(f.length))
+		factor /= f.under.even(t)
 	}
 	return factor
 }
@@ -107,9 +107,9 @@ func (f *form) at(t angle, h []complex128) float64 {
 	return sum * f.factor(t)
 }
 
-// scalar sets dst[i] to the form of a process of one component for h = 1. other and work are
-// work space.
-func (f *form) scalar(dst []float64, t, other []angle, work []float64) {
+// scalar sets dst[i] to the form of a process of one component for h = 1. work is work
+// space.
+func (f *form) scalar(dst []float64, t []angle, work []float64) {
 	f.even[0].evens(dst, t)
 	if f.rest != nil {
 		h := []complex128{1}
@@ -124,12 +124,6 @@ func (f *form) scalar(dst []float64, t, other []angle, work []float64) {
 	}
 	if f.under.a == nil {
 		return
-	}
-	if f.length > 1 {
-		for i := range t {
-			other[i] = t[i].times(f.length)
-		}
-		t = other
 	}
 	f.under.evens(work, t)
 	for i, under := range work {

@@ -19,7 +19,7 @@ func (m *machine) lump(ctx context.Context) (*machine, error) {
 	if m.states < lumpFrom {
 		return m, nil
 	}
-	slices.SortStableFunc(m.edges, func(a, b edge) int { return int(a.from - b.from) })
+	m.sort()
 	number := map[string]uint64{}
 	words := make([]uint64, len(m.edges))
 	for i, e := range m.edges {

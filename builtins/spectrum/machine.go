@@ -4,7 +4,9 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"slices"
 
+	"linewright/builtins/internal/markov"
 	"linewright/builtins/linecode"
 	"linewright/builtins/pulse"
 )
@@ -21,6 +23,40 @@ type machine struct {
 	states int
 	start  []float64
 	edges  []edge
+}
+
+// sort puts the edges in the order of the states that they leave.
+func (m *machine) sort() {
+	byState := func(a, b edge) int { return int(a.from - b.from) }
+	if !slices.IsSortedFunc(m.edges, byState) {
+		slices.SortStableFunc(m.edges, byState)
+	}
+}
+
+// graph is the machine without its words, edges between the same states added up. The edges must be sorted.
+func (m *machine) graph() *markov.Graph {
+	type sum struct {
+		from, to int32
+		p        float64
+	}
+	var sums []sum
+	at := make([]int32, m.states) // 1 + place in sums of the edge to a state
+	first := int32(0)             // place of the first edge of the state at hand
+	for i := range m.edges {
+		e := &m.edges[i]
+		if i > 0 && e.from != m.edges[i-1].from {
+			first = int32(len(sums))
+		}
+		if k := at[e.to]; k > first {
+			sums[k-1].p += e.p
+			continue
+		}
+		sums = append(sums, sum{e.from, e.to, e.p})
+		at[e.to] = int32(len(sums))
+	}
+	return markov.New(m.states, len(sums), func(i int) (from, to int, p float64) {
+		return int(sums[i].from), int(sums[i].to), sums[i].p
+	})
 }
 
 // A lexicon numbers the waveforms that symbols have: one a level, or one a pair of levels for a driver that looks at
@@ -70,11 +106,8 @@ func (x *lexicon) wave(prev, next int32) (int32, error) {
 	return n, nil
 }
 
-// read checks a chain and translates its levels to waveforms. It returns the waveforms' shapes beside the machine.
+// read translates a chain's levels to waveforms and sorts its edges by the state that they leave. It returns the waveforms' shapes beside the machine.
 func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []pulse.Shape, error) {
-	if err := check(ch); err != nil {
-		return nil, nil, err
-	}
 	x := &lexicon{drive: d, waves: map[[2]int32]int32{}}
 	if d.Transitional() {
 		m, err := x.remember(ctx, ch)
@@ -104,6 +137,7 @@ func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []
 		}
 		m.edges = append(m.edges, edge{int32(e.From), int32(e.To), e.P, words[from:len(words):len(words)]})
 	}
+	m.sort()
 	for i := range x.levels {
 		if _, err := x.wave(int32(i), int32(i)); err != nil {
 			return nil, nil, err

@@ -2,7 +2,6 @@ package spectrum
 
 import (
 	"context"
-	"slices"
 
 	"gonum.org/v1/gonum/floats"
 
@@ -24,10 +23,7 @@ type chainLaw struct {
 }
 
 func newLaw(ctx context.Context, m *machine, length int) (*chainLaw, error) {
-	byState := func(a, b edge) int { return int(a.from - b.from) }
-	if !slices.IsSortedFunc(m.edges, byState) {
-		slices.SortStableFunc(m.edges, byState)
-	}
+	m.sort()
 	l := &chainLaw{machine: m, length: length, graph: m.graph()}
 	l.period, l.cyc = l.graph.Period()
 	var err error

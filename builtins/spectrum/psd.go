@@ -83,6 +83,7 @@ func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
 	return exact(page.Context(), ch, d)
 }
 
+// exact is for a chain that was checked.
 func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
 	m, shapes, err := read(ctx, ch, d)
 	if err != nil {
@@ -300,13 +301,13 @@ func (p *PSD) evaluate(ctx context.Context, dst, nu []float64) {
 
 // A workspace is what a block of frequencies needs.
 type workspace struct {
-	t, other          []angle
+	t                 []angle
 	energy, raw, work []float64
 }
 
 func newWorkspace(n int) *workspace {
 	v := vectors(3, n)
-	return &workspace{make([]angle, n), make([]angle, n), v[0], v[1], v[2]}
+	return &workspace{make([]angle, n), v[0], v[1], v[2]}
 }
 
 // some is evaluate for one block.
@@ -325,7 +326,7 @@ func (p *PSD) some(dst, nu []float64, w *workspace) {
 			if c.form == nil {
 				continue
 			}
-			c.form.scalar(raw, t, w.other[:n], w.work[:n])
+			c.form.scalar(raw, t, w.work[:n])
 			least := nearPart * c.form.power(0)
 			for i, v := range raw {
 				if v < least && c.near != nil && math.Abs(t[i].nu) < c.near.reach {

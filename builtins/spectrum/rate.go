@@ -32,7 +32,7 @@ func (c coder) FixedRate() (bits, symbols int, fixed bool) {
 			m.edges = append(m.edges, edge{from: int32(e.From), to: int32(e.To), p: e.P, word: []int32{int32(e.Bits), int32(len(e.Levels))}})
 		}
 	}
-	slices.SortStableFunc(m.edges, func(a, b edge) int { return int(a.from - b.from) })
+	m.sort()
 	head := make([]int, m.states+1)
 	for _, e := range m.edges {
 		head[e.from+1]++

@@ -63,7 +63,11 @@ func (a *autocorr) ratio(ctx context.Context, lags int) (*form, int, error) {
 	for k := 1; k < len(g); k++ {
 		g[k] *= 2
 	}
-	under := newSeries(g)
+	spread := make([]float64, n*r+1) // in t, not N t
+	for k, v := range g {
+		spread[n*k] = v
+	}
+	under := newSeries(spread)
 	least := math.Inf(1)
 	const grid = 64
 	for k := range grid + 1 {
@@ -73,7 +77,7 @@ func (a *autocorr) ratio(ctx context.Context, lags int) (*form, int, error) {
 		return nil, never, nil
 	}
 	f := newForm(1, a.lags, nil)
-	f.even[0], f.under, f.length = newSeries(t), under, n
+	f.even[0], f.under = newSeries(t), under
 	return f, 0, nil
 }
 

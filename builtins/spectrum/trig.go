@@ -30,14 +30,6 @@ func newAngle(nu float64) angle {
 	return angle{nu: r, cos: 1 - 2*sin*sin, sin: 2 * sin * cos, half: sin, other: cos}
 }
 
-// times is the angle k t.
-func (t angle) times(k int) angle {
-	if k == 1 {
-		return t
-	}
-	return newAngle(t.nu * float64(k))
-}
-
 // even is the sum of a[k] cos kt, odd that of a[k] sin kt.
 //
 // They share Reinsch's form of Clenshaw's recurrence (J. Stoer and R. Bulirsch, Introduction to Numerical Analysis,
