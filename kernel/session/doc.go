@@ -3,7 +3,7 @@
 //
 //   - serve.go: the process around a kernel: descriptors, signals, parent, crash file
 //   - kernel.go, requests.go: channels and the table of requests
-//   - execute.go, output.go, ask.go, bundle.go: a cell and what it puts out
+//   - execute.go, output.go, record.go, ask.go, bundle.go: a cell and what it puts out
 //   - history.go: what was run
 //
 // # What runs where

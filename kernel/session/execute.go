@@ -97,7 +97,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 	}
 
 	done := ran{line: n, input: *r.Code}
-	b, err := k.run1(ctx, n, *r.Code, m, out)
+	b, err := k.runCell(ctx, n, *r.Code, m, out)
 	if err == nil && b != nil && !r.Silent {
 		if text, ok := b.Data["text/plain"].(string); ok {
 			done.output = &text
@@ -137,8 +137,8 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 	return stop
 }
 
-// run1 runs the cell's code. A panic that the interpreter lets through fails the cell, not the kernel.
-func (k *kernel) run1(ctx context.Context, n int, code string, m *wire.Message, out *output) (b *plotting.Bundle, err error) {
+// runCell runs the cell's code. A panic that the interpreter lets through fails the cell, not the kernel.
+func (k *kernel) runCell(ctx context.Context, n int, code string, m *wire.Message, out *output) (b *plotting.Bundle, err error) {
 	defer func() {
 		if v := recover(); v != nil {
 			k.log.Error("panic in the interpreter", "panic", v, "stack", string(debug.Stack()))
@@ -162,7 +162,7 @@ func (k *kernel) run1(ctx context.Context, n int, code string, m *wire.Message, 
 func (k *kernel) evaluate(ctx context.Context, expressions map[string]string, out *output) map[string]any {
 	values := map[string]any{}
 	for _, name := range slices.Sorted(maps.Keys(expressions)) {
-		b, err := k.evaluate1(ctx, expressions[name], out)
+		b, err := k.evaluateOne(ctx, expressions[name], out)
 		if err != nil {
 			values[name] = failure("error", err)
 		} else {
@@ -172,7 +172,8 @@ func (k *kernel) evaluate(ctx context.Context, expressions map[string]string, ou
 	return values
 }
 
-func (k *kernel) evaluate1(ctx context.Context, expr string, out cell.Output) (b plotting.Bundle, err error) {
+// evaluateOne evaluates one expression, with the same care as runCell.
+func (k *kernel) evaluateOne(ctx context.Context, expr string, out cell.Output) (b plotting.Bundle, err error) {
 	defer func() {
 		if v := recover(); v != nil {
 			k.log.Error("panic in the interpreter", "panic", v, "stack", string(debug.Stack()))

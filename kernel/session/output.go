@@ -4,7 +4,6 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
-	"os"
 	"sync"
 	"time"
 	"unicode/utf8"
@@ -29,12 +28,11 @@ type output struct {
 	request    *wire.Message
 	allowStdin bool
 
-	mu      sync.Mutex
-	text    [2][]byte   // of stdout and stderr, not sent yet; guarded by mu
-	timer   *time.Timer // runs while text waits; guarded by mu
-	waiting bool        // whether it runs; guarded by mu
-	sent    int         // bytes of text taken; guarded by mu
-	record  record      // guarded by mu
+	mu     sync.Mutex
+	text   [2][]byte   // of stdout and stderr, not sent yet; guarded by mu
+	timer  *time.Timer // runs while text waits, else nil; guarded by mu
+	taken  int         // bytes of text so far, sent or not; guarded by mu
+	record record      // guarded by mu
 }
 
 var _ cell.Output = (*output)(nil)
@@ -42,14 +40,7 @@ var _ cell.Output = (*output)(nil)
 var streams = [2]string{"stdout", "stderr"}
 
 func newOutput(k *kernel, ctx context.Context, request *wire.Message, allowStdin bool) *output {
-	o := &output{k: k, ctx: ctx, request: request, allowStdin: allowStdin}
-	o.timer = time.AfterFunc(time.Hour, func() {
-		o.mu.Lock()
-		defer o.mu.Unlock()
-		o.flush(false)
-	})
-	o.timer.Stop()
-	return o
+	return &output{k: k, ctx: ctx, request: request, allowStdin: allowStdin}
 }
 
 // Stream takes text of the interpreter. What compiled code wrote to the same descriptor before it comes first.
@@ -74,19 +65,22 @@ func (o *output) write(which int, p []byte) {
 	switch {
 	case len(o.text[which]) >= collectSize:
 		o.flush(false)
-	case !o.waiting && len(p) > 0:
-		o.waiting = true
-		o.timer.Reset(collectFor)
+	case o.timer == nil && len(p) > 0:
+		o.timer = time.AfterFunc(collectFor, func() {
+			o.mu.Lock()
+			defer o.mu.Unlock()
+			o.flush(false)
+		})
 	}
 }
 
 // admit counts p and returns what of it may be sent, with mu held.
 func (o *output) admit(p []byte) []byte {
-	over := o.sent > textLimit
-	room := max(textLimit-o.sent, 0)
-	o.sent += len(p)
+	over := o.taken > textLimit
+	room := max(textLimit-o.taken, 0)
+	o.taken += len(p)
 	o.record.add(p)
-	if over || o.sent <= textLimit {
+	if over || o.taken <= textLimit {
 		return p[:min(len(p), room)]
 	}
 	// p crosses the line.
@@ -102,9 +96,9 @@ func (o *output) admit(p []byte) []byte {
 func (o *output) flush(whole bool) {
 	o.flushOne(0, whole)
 	o.flushOne(1, whole)
-	if o.waiting {
-		o.waiting = false
+	if o.timer != nil {
 		o.timer.Stop()
+		o.timer = nil
 	}
 }
 
@@ -122,10 +116,11 @@ func (o *output) flushOne(which int, whole bool) {
 	content = append(content, streams[which]...)
 	content = append(content, `","text":`...)
 	content = append(appendText(content, text[:n]), '}')
-	o.text[which] = append([]byte(nil), text[n:]...)
-	if cap(text) <= 2*collectSize {
-		o.text[which] = append(text[:0], text[n:]...)
+	rest := text[n:]
+	if cap(text) > 2*collectSize {
+		text = nil // a large buffer is not kept for what may be little
 	}
+	o.text[which] = append(text[:0], rest...)
 	o.k.publish(o.request, "stream", json.RawMessage(content))
 }
 
@@ -157,13 +152,15 @@ func (o *output) finish() {
 	o.mu.Lock()
 	defer o.mu.Unlock()
 	o.flush(true)
-	if o.sent > textLimit {
-		const format = "[linewright: %d bytes of text in all, %d not shown]\n"
-		note := fmt.Appendf(nil, format, o.sent, o.sent-textLimit)
-		o.text[1] = append(o.text[1], note...)
+	if o.taken > textLimit {
+		note := fmt.Appendf(nil, "[linewright: %d bytes of text in all, %d not shown", o.taken, o.taken-textLimit)
+		if o.record.kept && o.record.size < o.taken {
+			note = fmt.Appendf(note, ", the first %d in the file", o.record.size)
+		}
+		o.text[1] = append(o.text[1], append(note, "]\n"...)...)
 		o.flush(true)
 	}
-	o.sent = 0
+	o.taken = 0
 	o.record.end()
 }
 
@@ -190,74 +187,4 @@ func (o *output) Exit(code int) {
 	o.k.publish(o.request, "status", status{"idle"})
 	o.k.wire.Drain(linger)
 	o.k.exit(code)
-}
-
-// spoolFrom is the number of bytes from which a cell's text is kept in a file beside being sent.
-const spoolFrom = 1 << 20
-
-// A record keeps all text of a cell as long as it may still grow beyond what is sent. Only a file that was asked for
-// outlives the cell.
-type record struct {
-	head   []byte   // the text, while it is short
-	file   *os.File // the text, when it is not
-	kept   bool
-	failed bool
-}
-
-func (r *record) add(p []byte) {
-	if r.failed {
-		return
-	}
-	if r.file == nil {
-		if len(r.head)+len(p) <= spoolFrom {
-			r.head = append(r.head, p...)
-			return
-		}
-		f, err := os.CreateTemp("", "linewright-*.txt")
-		if err != nil {
-			r.fail()
-			return
-		}
-		r.file = f
-		if _, err := f.Write(r.head); err != nil {
-			r.fail()
-			return
-		}
-		r.head = nil
-	}
-	if _, err := r.file.Write(p); err != nil {
-		r.fail()
-	}
-}
-
-// keep lets the file outlive the cell and returns its path, or "" where there is none.
-func (r *record) keep() string {
-	if r.failed || r.file == nil {
-		return ""
-	}
-	r.kept = true
-	return r.file.Name()
-}
-
-// fail gives up, for instance on a full disk.
-func (r *record) fail() {
-	r.failed, r.kept = true, false
-	r.head = nil
-	r.remove()
-}
-
-func (r *record) remove() {
-	if r.file != nil {
-		r.file.Close()
-		if !r.kept {
-			os.Remove(r.file.Name())
-		}
-		r.file = nil
-	}
-}
-
-// end forgets the text.
-func (r *record) end() {
-	r.remove()
-	*r = record{}
 }

@@ -197,6 +197,36 @@ func TestTextLimit(t *testing.T) {
 	}
 }
 
+// Without a file the text is sent all the same, and the cell says that the rest is lost.
+func TestTextLimitWithoutFile(t *testing.T) {
+	t.Setenv("TMPDIR", t.TempDir()+"/none")
+	output := run(t, func(out cell.Output) {
+		for range textLimit>>20 + 1 {
+			out.Stream("stdout", make([]byte, 1<<20))
+		}
+	})
+	if sent := text(t, output, "stdout"); !strings.HasPrefix(sent[textLimit:], "\n[linewright: this cell has put out 64 MB of text; the rest is not shown here, the whole could not be kept") {
+		t.Errorf("the note: %q", sent[textLimit:])
+	}
+}
+
+// A record stops at its limit.
+func TestRecordLimit(t *testing.T) {
+	t.Setenv("TMPDIR", t.TempDir())
+	var r record
+	r.add(make([]byte, recordFrom+1))
+	r.size = recordMost - 3 // as if so much had been written
+	r.add([]byte("abcdef"))
+	if r.size != recordMost || !r.full {
+		t.Errorf("%d bytes kept, full %t", r.size, r.full)
+	}
+	info, err := r.file.Stat()
+	if err != nil || info.Size() != recordFrom+1+3 {
+		t.Errorf("the file has %d bytes, %v", info.Size(), err)
+	}
+	r.end()
+}
+
 // A cell below the limit is sent whole and leaves no file.
 func TestTextBelowTheLimit(t *testing.T) {
 	dir := t.TempDir()

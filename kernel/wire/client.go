@@ -81,7 +81,7 @@ func (k *Client) receive(ch Channel) {
 			return
 		}
 		// The other end holds the key, or can do whatever it likes anyway: what it gets wrong is left out.
-		if m, err := k.codec.decode(raw.Frames); err == nil {
+		if m, err := k.codec.decode(0, raw.Frames); err == nil {
 			k.inbox[ch].Put(m)
 		}
 	}

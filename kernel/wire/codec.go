@@ -106,13 +106,14 @@ func marshal(v any) (json.RawMessage, error) {
 	return bytes.TrimSuffix(b.Bytes(), []byte("\n")), nil
 }
 
-// decode checks and takes apart the frames of a message, routing frames included.
-func (c *codec) decode(frames [][]byte) (*Message, error) {
-	at := 0
+// decode checks and takes apart the frames of a message, routing frames included. The first routed of them were put there
+// by the socket: an identity may look like the delimiter.
+func (c *codec) decode(routed int, frames [][]byte) (*Message, error) {
+	at := routed
 	for at < len(frames) && !bytes.Equal(frames[at], delimiter) {
 		at++
 	}
-	if at == len(frames) {
+	if at >= len(frames) {
 		return nil, fmt.Errorf("malformed: no %s among %d frames", delimiter, len(frames))
 	}
 	rest := frames[at+1:]

@@ -82,9 +82,15 @@ type door struct {
 	peers map[*peer]struct{} // guarded by mu
 }
 
+// maxSocketPath is what every system takes; where it takes no more, its own error says only "invalid argument".
+const maxSocketPath = 103
+
 // openDoor listens. The caller sets the callbacks and then calls serve.
 func openDoor(network, address string, kind zmq4.SocketType, l limits) (*door, error) {
 	if network == "unix" {
+		if len(address) > maxSocketPath {
+			return nil, fmt.Errorf("the socket's path has %d bytes, above %d: %s", len(address), maxSocketPath, address)
+		}
 		if err := clearSocket(address); err != nil {
 			return nil, err
 		}

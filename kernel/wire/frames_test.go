@@ -224,9 +224,11 @@ func FuzzDecode(f *testing.F) {
 	}
 	f.Add(bytes.Join(frames, []byte("|")), byte('|'))
 	f.Fuzz(func(t *testing.T, all []byte, cut byte) {
-		m, err := c.decode(bytes.Split(all, []byte{cut}))
-		if err == nil && (m.ID == "" || m.Type == "") {
-			t.Errorf("accepted %q", all)
+		for routed := range 2 {
+			m, err := c.decode(routed, bytes.Split(all, []byte{cut}))
+			if err == nil && (m.ID == "" || m.Type == "" || len(m.Identities) < routed) {
+				t.Errorf("accepted %q", all)
+			}
 		}
 	})
 }

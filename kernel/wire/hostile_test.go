@@ -432,3 +432,15 @@ func TestTwoClientsOfOneIdentity(t *testing.T) {
 		}
 	}
 }
+
+// An identity may be anything, also what parts the routing frames from the message.
+func TestIdentityLikeTheDelimiter(t *testing.T) {
+	s, _ := listen(t, Connection{Transport: "tcp", IP: "127.0.0.1"}) // unsigned: nothing else stands in the way
+	mirror(s)
+	p := greeted(t, s, Shell, zmq4.Dealer, string(delimiter))
+	p.send(wireMessage([][]byte{nil, []byte(`{"msg_id":"a","msg_type":"b"}`), empty, empty, empty})) // no delimiter
+	p.send(signed(t, s, `{"n":1}`))
+	if m := p.message(); string(m[len(m)-1]) != `{"n":1}` {
+		t.Errorf("reply %q", m)
+	}
+}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
+	"log/slog"
 	"os"
 	"path/filepath"
 	"strings"
@@ -401,6 +402,30 @@ func TestPortInUse(t *testing.T) {
 	}
 	if _, err := Listen(Connection{Transport: "tcp", IP: "127.0.0.1", Key: "k", SignatureScheme: "hmac-md5"}, nil); err == nil || !strings.Contains(err.Error(), "hmac-md5") {
 		t.Errorf("another scheme: %v", err)
+	}
+}
+
+func TestLongSocketPath(t *testing.T) {
+	c := Connection{Transport: "ipc", IP: "/tmp/" + strings.Repeat("x", 100), ShellPort: 1}
+	if _, err := Listen(c, nil); err == nil || !strings.Contains(err.Error(), "the socket's path has 107 bytes, above 103") {
+		t.Errorf("error %v", err)
+	}
+}
+
+// Whoever floods the kernel does not flood its log.
+func TestLogIsLimited(t *testing.T) {
+	var text logged
+	l := limitedLog{log: slog.New(slog.NewTextHandler(&text, nil))}
+	for range 1000 {
+		l.warn("dropped")
+	}
+	if n := strings.Count(text.String(), "dropped"); n != 10 {
+		t.Errorf("%d lines in one second, want 10", n)
+	}
+	l.second = l.second.Add(-time.Second)
+	l.warn("dropped")
+	if !strings.Contains(text.String(), `"left out before"=990`) {
+		t.Errorf("the line afterwards does not count those left out: %s", &text)
 	}
 }
 

@@ -1,6 +1,7 @@
 package wire
 
 import (
+	"context"
 	"encoding/json"
 	"fmt"
 	"io"
@@ -9,8 +10,6 @@ import (
 	"net"
 	"sync"
 	"time"
-
-	"context"
 
 	"github.com/go-zeromq/zmq4"
 )
@@ -116,7 +115,7 @@ func (s *Server) receive(ch Channel, put func(*Message)) {
 			s.inbox[ch].End()
 			return
 		}
-		m, err := s.codec.decode(raw.Frames)
+		m, err := s.codec.decode(1, raw.Frames)
 		if err != nil {
 			s.log.warn("message dropped", "channel", ch.String(), "why", err.Error())
 			continue
