@@ -255,7 +255,7 @@ func TestInterruptWhileAsking(t *testing.T) {
 	id := c.start(`page.Ask("one? ")`, object{"allow_stdin": true})
 	c.take(wire.Stdin)
 	c.ask(wire.Control, "interrupt_request", nil)
-	equal(t, "reply", decode(t, c.answer(wire.Shell, id))["status"], `"error"`)
+	equal(t, "reply", decode(t, c.answer(wire.Shell, id))["ename"], `"interrupted"`)
 }
 
 // What answers no open question is nobody's: it does not become the answer to the next.
