@@ -203,6 +203,25 @@ func TestExecute(t *testing.T) {
 	validate(t, encoded(t, n))
 }
 
+// What a cell writes to its descriptors and what it prints arrives whole and in order, also when it is more than pipes
+// and buffers hold.
+func TestLargeOutputArrivesWhole(t *testing.T) {
+	n := notebookOf(t, `import ("bytes"; "os")
+b := bytes.Repeat([]byte("0123456789abcde\n"), 1_000_000)
+fmt.Print(string(b))
+os.Stdout.Write(b)
+fmt.Println("end")`)
+	ctx, cancel := context.WithTimeout(t.Context(), 30*time.Second)
+	defer cancel()
+	if _, err := n.Execute(ctx, under(t, "real")); err != nil {
+		t.Fatal(err)
+	}
+	want := strings.Repeat("0123456789abcde\n", 2_000_000) + "end\n"
+	if out := n.Cells[0].Outputs; len(out) != 1 || out[0].Text != want {
+		t.Errorf("%d outputs, the first of %d bytes, want one of %d", len(out), len(out[0].Text), len(want))
+	}
+}
+
 func TestSameNotebookSameBytes(t *testing.T) {
 	cells := []string{`linecode.AMI()`, `[]float64{1, 2}`, `fmt.Println(map[string]int{"b": 1, "a": 2})`}
 	var first []byte
