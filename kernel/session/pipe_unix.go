@@ -3,6 +3,7 @@
 package session
 
 import (
+	"io"
 	"log"
 	"os"
 	"sync"
@@ -81,7 +82,15 @@ func (p *pipe) start(to func([]byte)) {
 	p.to = to
 	p.mu.Unlock()
 	go p.raw.Read(func(fd uintptr) (done bool) {
-		return p.drain(int(fd)) != syscall.EAGAIN // EAGAIN: call again when there is more
+		for {
+			switch p.drain(int(fd)) {
+			case nil: // there is more, and nobody will say so again
+			case syscall.EAGAIN:
+				return false // call again when there is more
+			default:
+				return true
+			}
+		}
 	})
 }
 
@@ -90,13 +99,13 @@ func (p *pipe) catchUp() {
 	p.raw.Control(func(fd uintptr) { p.drain(int(fd)) })
 }
 
-// drain delivers until nothing is left, or until so much has come that whoever asked has everything that had been
-// written by then: more than a pipe holds.
+// drain delivers until nothing is left, and returns EAGAIN, or until so much has come that whoever asked has everything
+// that had been written by then, more than a pipe holds, and returns nil. At the end of the pipe it returns io.EOF.
 func (p *pipe) drain(fd int) error {
 	p.mu.Lock()
 	defer p.mu.Unlock()
 	if p.to == nil || p.undone {
-		return nil
+		return io.EOF
 	}
 	const most = 1 << 20
 	for total := 0; total < most; {
@@ -106,13 +115,13 @@ func (p *pipe) drain(fd int) error {
 		case err != nil:
 			return err
 		case n == 0:
-			return nil
+			return io.EOF
 		default:
 			p.to(p.buffer[:n])
 			total += n
 		}
 	}
-	return syscall.EAGAIN
+	return nil
 }
 
 // restore delivers the rest and puts everything back; twice does no harm.
