@@ -241,19 +241,26 @@ func (l *lowering) implementers(t types.Type) []types.Type {
 	for name, o := range l.u.objects {
 		objects[name] = o
 	}
-	var found []types.Type
+	var candidates, found []types.Type
 	for _, name := range sorted(objects) {
 		o, ok := objects[name].(*types.TypeName)
 		if !ok || o.IsAlias() || types.IsInterface(o.Type()) {
 			continue
 		}
-		if n, ok := o.Type().(*types.Named); !ok || n.TypeParams().Len() > 0 {
-			continue
+		if n, ok := o.Type().(*types.Named); ok && n.TypeParams().Len() == 0 {
+			candidates = append(candidates, n)
 		}
-		if types.Implements(o.Type(), i) {
-			found = append(found, o.Type())
+		for _, table := range []map[types.Object][]*instance{l.in.instances, l.p.instances} {
+			for _, inst := range table[o] {
+				candidates = append(candidates, inst.typ)
+			}
 		}
-		if p := types.NewPointer(o.Type()); types.Implements(p, i) {
+	}
+	for _, c := range candidates {
+		if types.Implements(c, i) {
+			found = append(found, c)
+		}
+		if p := types.NewPointer(c); types.Implements(p, i) {
 			found = append(found, p)
 		}
 	}

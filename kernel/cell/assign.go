@@ -34,15 +34,15 @@ func (l *lowering) keep(list *[]ast.Stmt, x ast.Expr) ast.Expr {
 
 // parallel turns a, b = x, y into t, u := x, y; a = t; b = u, with the operands of targets evaluated first.
 func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
-	if len(s.Rhs) == 1 && len(s.Lhs) >= 2 && s.Tok == token.ASSIGN {
+	if len(s.Rhs) == 1 && s.Tok == token.ASSIGN {
 		l.several(c, s)
 		return
 	}
 	if len(s.Lhs) < 2 || len(s.Lhs) != len(s.Rhs) || s.Tok != token.ASSIGN && s.Tok != token.DEFINE {
 		return
 	}
-	if s.Tok == token.DEFINE && l.allNew(s) {
-		return // new variables cannot be seen on the right
+	if s.Tok == token.DEFINE && l.allNew(s) && !l.callsIn(s.Rhs) || s.Tok == token.DEFINE && c.Index() < 0 {
+		return // new variables cannot be seen on the right; of heads, head takes care
 	}
 	var list []ast.Stmt
 	for i, x := range s.Lhs {
@@ -66,9 +66,11 @@ func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
 	}
 }
 
-// several gives the values of one expression to targets that are no plain variables by way of variables.
+// several gives the values of one expression to targets by way of variables: if there are several and not all are plain
+// variables, and if it is a call of a cell's function, which would write its results where the targets are while it runs.
 func (l *lowering) several(c *astutil.Cursor, s *ast.AssignStmt) {
-	if !slices.ContainsFunc(s.Lhs, func(x ast.Expr) bool { _, ok := x.(*ast.Ident); return !ok }) {
+	elements := slices.ContainsFunc(s.Lhs, func(x ast.Expr) bool { _, ok := x.(*ast.Ident); return !ok })
+	if !(len(s.Lhs) > 1 && elements) && !l.callsCell(s.Rhs[0]) {
 		return
 	}
 	var list, after []ast.Stmt
@@ -81,6 +83,9 @@ func (l *lowering) several(c *astutil.Cursor, s *ast.AssignStmt) {
 		s.Lhs[i] = t
 		after = append(after, &ast.AssignStmt{Lhs: []ast.Expr{x}, TokPos: s.TokPos, Tok: token.ASSIGN, Rhs: []ast.Expr{&ast.Ident{Name: t.Name, NamePos: x.Pos()}}})
 	}
+	if len(after) == 0 {
+		return
+	}
 	s.Tok = token.DEFINE
 	list = append(append(list, s), after...)
 	if c.Index() >= 0 {
@@ -88,6 +93,81 @@ func (l *lowering) several(c *astutil.Cursor, s *ast.AssignStmt) {
 	} else {
 		l.extract(c, s, list)
 	}
+}
+
+// callsCell reports whether an expression is a call of a function that is, or may be, one of the cells.
+func (l *lowering) callsCell(x ast.Expr) bool {
+	call, ok := ast.Unparen(x).(*ast.CallExpr)
+	if !ok || l.synthetic[call] {
+		return false
+	}
+	if tv := l.u.info.Types[call.Fun]; tv.IsType() || tv.IsBuiltin() {
+		return false
+	}
+	if s, ok := ast.Unparen(call.Fun).(*ast.SelectorExpr); ok {
+		if fn, ok := l.u.info.Uses[s.Sel].(*types.Func); ok && fn.Pkg() != nil && fn.Pkg().Path() != "main" {
+			return false
+		}
+	}
+	return true
+}
+
+// callsIn reports whether there is a call in a list of expressions.
+func (l *lowering) callsIn(list []ast.Expr) bool {
+	found := false
+	for _, x := range list {
+		ast.Inspect(x, func(n ast.Node) bool {
+			_, call := n.(*ast.CallExpr)
+			found = found || call
+			_, lit := n.(*ast.FuncLit)
+			return !lit
+		})
+	}
+	return found
+}
+
+// head evaluates the values of v, w := f(), g() in the head of an if, switch or for before the statement, which becomes a
+// block: the interpreter loses the results of calls there.
+func (l *lowering) head(c *astutil.Cursor, s ast.Stmt, init ast.Stmt) {
+	a, ok := init.(*ast.AssignStmt)
+	if !ok || a.Tok != token.DEFINE || len(a.Lhs) < 2 || len(a.Lhs) != len(a.Rhs) || !l.callsIn(a.Rhs) {
+		return
+	}
+	block := &ast.BlockStmt{Lbrace: s.Pos(), Rbrace: s.End()}
+	for i, x := range a.Rhs {
+		a.Rhs[i] = l.keep(&block.List, x)
+	}
+	block.List = append(block.List, s)
+	l.hoisted[block] = true
+	c.Replace(block)
+}
+
+// zeroResults sets a function's named results to zero where it starts: the interpreter leaves in them what the variable held
+// that the result is assigned to.
+func (l *lowering) zeroResults(t *ast.FuncType, body *ast.BlockStmt) {
+	if t.Results == nil || body == nil {
+		return
+	}
+	var list []ast.Stmt
+	for _, f := range t.Results.List {
+		for _, id := range f.Names {
+			o := l.u.info.Defs[id]
+			if o == nil || id.Name == "_" {
+				continue
+			}
+			zero := l.zero(o.Type(), body.Lbrace)
+			if x, ok := zero.(*ast.CompositeLit); ok {
+				// Of a literal the interpreter would make another variable than the result.
+				t := l.temp(body.Lbrace)
+				list = append(list, &ast.DeclStmt{Decl: varDecl(body.Lbrace, t.Name, x.Type)})
+				zero = &ast.Ident{Name: t.Name, NamePos: body.Lbrace}
+			}
+			list = append(list, &ast.AssignStmt{
+				Lhs: []ast.Expr{&ast.Ident{Name: id.Name, NamePos: body.Lbrace}}, TokPos: body.Lbrace, Tok: token.ASSIGN, Rhs: []ast.Expr{zero},
+			})
+		}
+	}
+	body.List = append(list, body.List...)
 }
 
 // extract puts statements where only one may stand: in the head of an if or a for, as a call of a function literal.

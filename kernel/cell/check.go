@@ -105,7 +105,8 @@ func (in *Interpreter) check(src *source, p *plan) (*unit, error) {
 		if !ok {
 			continue // assigned, not declared, by its :=
 		}
-		g := types.NewVar(v.Pos(), second, v.Name(), v.Type())
+		// Its package is an empty one: through this cell's, each variable would keep those before it alive.
+		g := types.NewVar(v.Pos(), in.pkg, v.Name(), v.Type())
 		u.vars[v] = g
 		u.objects[v.Name()] = g
 		u.order = append(u.order, g)
@@ -367,7 +368,7 @@ func (in *Interpreter) problems(list []problem) error {
 		errs = append(errs, &scanner.Error{Pos: in.fset.Position(p.pos), Msg: plain(p.msg)})
 	}
 	errs.Sort()
-	return errs
+	return slices.CompactFunc(errs, func(a, b *scanner.Error) bool { return *a == *b })
 }
 
 func sorted[V any](m map[string]V) []string {

@@ -108,7 +108,7 @@ func TestEdges(t *testing.T) {
 			"a, b := 3, 2\nfmt.Println(min(a, b), max(a, b, 7), min(2.5, float64(a)), max(\"a\", fmt.Sprint(b)))", "2 7 2.5 a\n",
 			"m := map[int]int{1: 1}\nclear(m)\nlen(m)", "0", "s := []int{1, 2}\nclear(s)\ns", "[0 0]",
 		}},
-		{"16 generic functions of packages are refused", []string{"import \"slices\"\nslices.Sort([]int{2, 1})", "error: cell[1]:2:1: slices.Sort"}},
+		{"16 generic functions of packages are refused", []string{"import \"slices\"\nslices.Sort([]int{2, 1})", "error: cell[1]:2:1: slices.Sort is not available"}},
 		{"23 unexported fields in JSON are a limit", []string{"import \"encoding/json\"\ntype t struct{ A, b int }\nout, err := json.Marshal(t{1, 2})\nstring(out)", `{"A":1,"Xb":2}`}},
 		{"14 several values", []string{"func f() (int, string) { return 1, \"a\" }\nf()", "1 a"}},
 		{"18 a named result and := of it", []string{"func one() (int, error) { return 1, fmt.Errorf(\"bad\") }", "", "func f() (i int, err error) {\n\tr, err := one()\n\ti = r\n\treturn\n}\nv, e := f()\nfmt.Println(v, e)", "1 bad\n"}},

@@ -1,6 +1,7 @@
 package cell
 
 import (
+	"fmt"
 	"go/ast"
 	"go/token"
 	"go/types"
@@ -15,6 +16,7 @@ import (
 type instance struct {
 	args    []types.Type
 	slot    string
+	typ     *types.Named           // of a type: itself
 	methods map[string]*types.Func // of a type: the methods that have slots
 }
 
@@ -115,6 +117,7 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 	from, to := whole.Name.Pos(), whole.End()
 	slot := f.Name.Name
 	l.rewrite(f, f.Body)
+	l.zeroResults(f.Type, f.Body)
 	f.Name.Name = slot
 	l.mark(name, kernel+"at_"+slot, from, to, f.Body)
 	l.p.funcs = append(l.p.funcs, f)
@@ -138,7 +141,7 @@ func (l *lowering) typeInstance(t *types.Named, pos token.Pos) *instance {
 	if i := l.instance(origin, args); i != nil {
 		return i
 	}
-	i := &instance{args: args, slot: l.in.gens.fresh(origin.Name()), methods: map[string]*types.Func{}}
+	i := &instance{args: args, slot: l.in.gens.fresh(origin.Name()), typ: t, methods: map[string]*types.Func{}}
 	l.p.instances[origin] = append(l.p.instances[origin], i)
 	l.p.named[i.slot] = t
 	under := l.typeExpr(t.Underlying(), pos)
@@ -181,11 +184,14 @@ func receiverParams(f *ast.FuncDecl) []string {
 	}
 	var names []string
 	for _, p := range params {
-		name := "_"
-		if id, ok := p.(*ast.Ident); ok {
-			name = id.Name
+		id, ok := p.(*ast.Ident)
+		if !ok {
+			continue // the checker has refused it
 		}
-		names = append(names, name)
+		if id.Name == "_" {
+			id.Name = fmt.Sprintf("%su%d", kernel, len(names)) // as a name of a type it must be one
+		}
+		names = append(names, id.Name)
 	}
 	return names
 }

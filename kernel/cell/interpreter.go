@@ -9,7 +9,6 @@ import (
 	"go/token"
 	"go/types"
 	"reflect"
-	"runtime/debug"
 	"strings"
 	"sync"
 	"sync/atomic"
@@ -64,6 +63,7 @@ type Interpreter struct {
 	methods   map[types.Object]string       // method -> the interpreter's variable that holds its function
 	texts     map[*types.Func]reflect.Value // String and Error methods -> a pointer to the variable in methods
 	named     map[string]types.Type         // the interpreter's name of a type -> the type
+	pkg       *types.Package                // of the cells' variables; see check
 	instances map[types.Object][]*instance  // of generic functions and types
 	typeTable []types.Type                  // what the calls of typed in lowered code refer to
 	typeIDs   typeutil.Map
@@ -102,6 +102,7 @@ func New(opt Options) (*Interpreter, error) {
 	}
 	in := &Interpreter{
 		opt: opt, lib: lib,
+		pkg:   types.NewPackage("main", "main"),
 		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
 		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]types.Type{}, instances: map[types.Object][]*instance{}, gens: generations{},
 		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
@@ -223,9 +224,6 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 	defer in.types.Unlock()
 	defer func() {
 		if v := recover(); v != nil {
-			if debugStack {
-				debug.PrintStack()
-			}
 			p, err = nil, fmt.Errorf("this kernel cannot compile the cell, which is a fault of the kernel: %v", v)
 		}
 	}()
@@ -348,5 +346,3 @@ func (in *Interpreter) commit(u *unit, p *program) {
 		in.named[slot] = t
 	}
 }
-
-var debugStack = true

@@ -287,7 +287,7 @@ func (l *lowering) capture(c *astutil.Cursor, n *ast.FuncLit) {
 
 // defers reports whether the function around the node at hand defers calls.
 func (l *lowering) defers() bool {
-	body := l.body0
+	body := l.funcBody
 	for i := len(l.nest) - 1; i >= 0; i-- {
 		if lit, ok := l.nest[i].(*ast.FuncLit); ok {
 			body = lit.Body

@@ -36,7 +36,7 @@ type lowering struct {
 	p         *program
 	bad       []problem
 	params    map[types.Object]bool                // type parameters of instances, as names of types
-	body0     *ast.BlockStmt                       // body of the function that is being lowered
+	funcBody  *ast.BlockStmt                       // body of the function that is being lowered
 	nest      []ast.Node                           // loops and function literals around the node at hand
 	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
 	literals  int                                  // function literals so far
@@ -157,6 +157,7 @@ func (l *lowering) function(d *ast.FuncDecl) {
 		}
 	}
 	l.rewrite(d, d.Body)
+	l.zeroResults(d.Type, d.Body)
 	l.mark(name, kernel+"at_"+strings.ReplaceAll(name, ".", "_"), from, to, d.Body)
 	l.p.funcs = append(l.p.funcs, d)
 }
@@ -206,7 +207,7 @@ func (l *lowering) body(fn *ast.FuncDecl) {
 	l.rewrite(fn.Body, fn.Body)
 	l.mark("", kernel+"at", from, to, fn.Body)
 	l.guard(fn.Body)
-	l.p.entry = l.in.gens.fresh(kernel + "cell")
+	l.p.entry = kernel + "cell" // the same each time, so that the interpreter drops the last one
 	fn.Name.Name = l.p.entry
 	l.p.funcs = append(l.p.funcs, fn)
 }
@@ -316,10 +317,10 @@ func isError(t types.Type) bool { return types.Identical(t, types.Universe.Looku
 
 // rewrite lowers a tree in place. Body is that of the function that it is, or nil.
 func (l *lowering) rewrite(n ast.Node, body *ast.BlockStmt) {
-	outer := l.body0
-	l.body0 = body
+	outer := l.funcBody
+	l.funcBody = body
 	astutil.Apply(n, l.before, l.after)
-	l.body0 = outer
+	l.funcBody = outer
 }
 
 // before folds constants and renames packages, from the outside in.
@@ -404,7 +405,11 @@ func (l *lowering) inLoop() bool {
 // selector lowers a name of a package.
 func (l *lowering) selector(s *ast.SelectorExpr, id *ast.Ident, p *types.Package) {
 	if !l.in.vm.has(p.Path(), s.Sel.Name) {
-		l.fail(s.Pos(), "%s.%s is Go, but cells cannot use it: the interpreter has no %s", p.Name(), s.Sel.Name, s.Sel.Name)
+		why := "the interpreter's tables end before it"
+		if o := p.Scope().Lookup(s.Sel.Name); o != nil && isGeneric(o) {
+			why = "cells can use generic code of their own, not yet that of packages"
+		}
+		l.fail(s.Pos(), "%s.%s is not available: %s", p.Name(), s.Sel.Name, why)
 		return
 	}
 	id.Name = l.alias(p)
@@ -448,13 +453,19 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		}
 		l.methodCall(n)
 	case *ast.FuncLit:
+		l.zeroResults(n.Type, n.Body)
 		l.capture(c, n)
+	case *ast.IfStmt:
+		l.head(c, n, n.Init)
+	case *ast.SwitchStmt:
+		l.head(c, n, n.Init)
 	case *ast.GoStmt:
 		c.Replace(l.goStmt(n))
 	case *ast.DeferStmt:
 		l.deferStmt(c, n)
 	case *ast.ForStmt:
 		l.forStmt(n, labelOf(c))
+		l.head(c, n, n.Init)
 	case *ast.RangeStmt:
 		if s := l.rangeStmt(n); s != nil {
 			c.Replace(s)
@@ -623,4 +634,14 @@ func (l *lowering) stillMine(pos token.Pos) ast.Stmt {
 		},
 		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{&ast.ExprStmt{X: l.hook("Leave", pos)}}, Rbrace: pos},
 	}
+}
+
+func isGeneric(o types.Object) bool {
+	switch t := o.Type().(type) {
+	case *types.Signature:
+		return t.TypeParams().Len() > 0
+	case *types.Named:
+		return t.TypeParams().Len() > 0
+	}
+	return false
 }

@@ -28,7 +28,8 @@ type machine struct {
 	tables []interp.Exports
 	id     *uint64
 	done   chan struct{}
-	pair   reflect.Type // of what it keeps in an any for a value of a type with methods
+	keeps  []reflect.Value // what yaegi keeps of all that was compiled, for its debugger only: trees and scopes
+	pair   reflect.Type    // of what it keeps in an any for a value of a type with methods
 }
 
 func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, error) {
@@ -53,7 +54,32 @@ func newMachine(stdout, stderr io.Writer, more ...interp.Exports) (*machine, err
 		return nil, err
 	}
 	m.id, m.done = id, *done
+	if err := m.findKept(); err != nil {
+		return nil, err
+	}
 	return m, m.findPair()
+}
+
+// findKept finds the lists of trees and scopes.
+func (m *machine) findKept() error {
+	wrong := errors.New("cell: this yaegi keeps its trees and scopes in another form; the pinned version is v0.16.1")
+	y := reflect.ValueOf(m.yaegi).Elem()
+	roots, scopes := y.FieldByName("roots"), y.FieldByName("scopes")
+	if !roots.IsValid() || roots.Kind() != reflect.Slice || !scopes.IsValid() || scopes.Kind() != reflect.Map {
+		return wrong
+	}
+	scope := scopes.MapIndex(reflect.ValueOf("main"))
+	if !scope.IsValid() || scope.Kind() != reflect.Pointer || scope.IsNil() {
+		return wrong
+	}
+	children := scope.Elem().FieldByName("child")
+	if !children.IsValid() || children.Kind() != reflect.Slice {
+		return wrong
+	}
+	for _, list := range []reflect.Value{roots, children} {
+		m.keeps = append(m.keeps, reflect.NewAt(list.Type(), list.Addr().UnsafePointer()).Elem())
+	}
+	return nil
 }
 
 // findPair finds the private type of interface values.
@@ -137,6 +163,13 @@ func (m *machine) compile(n ast.Node) (p *interp.Program, err error) {
 func (m *machine) call(name string) error {
 	_, err := m.yaegi.Eval(name + "()")
 	return err
+}
+
+// forget lets go of the trees of what was compiled, as far as no function needs them.
+func (m *machine) forget() {
+	for _, list := range m.keeps {
+		list.SetZero()
+	}
 }
 
 // has reports whether the symbol tables have the name of that package.

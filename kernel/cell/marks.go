@@ -30,7 +30,6 @@ type function struct {
 	name       string // "f", "T.M", "func" of a literal, "" of the cell
 	start, end int    // packed places
 	mark       string // the interpreter's variable
-	calls      map[string]int
 }
 
 // tracks knows the functions of the session. It is used by panicking goroutines while another cell may be compiled.

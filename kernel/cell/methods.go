@@ -72,7 +72,7 @@ func (l *lowering) setup(pos token.Pos) {
 	if len(l.sets) == 0 {
 		return
 	}
-	l.p.setup = l.in.gens.fresh(kernel + "set")
+	l.p.setup = kernel + "set"
 	body := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
 	for _, s := range l.sets {
 		body.List = append(body.List, &ast.AssignStmt{

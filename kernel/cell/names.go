@@ -15,10 +15,15 @@ const (
 	asError = kernel + "error" // a function of the interpreter that makes an error of its argument
 )
 
-var marked = regexp.MustCompile(`(?:\bmain\.)?` + `([\p{L}_][\p{L}\p{Nd}_]*?)` + mark + `\d+\b`)
+var (
+	marked       = regexp.MustCompile(`([\p{L}_][\p{L}\p{Nd}_]*?)` + mark + `\d+`)
+	cellsPackage = regexp.MustCompile(`\bmain\.`)
+)
 
-// plain takes generations out of a message.
-func plain(s string) string { return marked.ReplaceAllString(s, "$1") }
+// plain takes generations, and the package that all cells are to the checker, out of a message.
+func plain(s string) string {
+	return cellsPackage.ReplaceAllString(marked.ReplaceAllString(s, "$1"), "")
+}
 
 // generations numbers the interpreter's names.
 type generations map[string]int

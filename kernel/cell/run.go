@@ -7,7 +7,6 @@ import (
 	"go/scanner"
 	"runtime"
 	"strings"
-	"sync"
 	"time"
 
 	"github.com/traefik/yaegi/interp"
@@ -32,8 +31,7 @@ type run struct {
 	bundle  *plotting.Bundle // what the last expression showed
 	failure error            // what the last expression failed with
 
-	mu    sync.Mutex
-	shown map[string]bool // slots shown by this run
+	shown map[string]bool // slots shown by this run; under pageState.mu
 }
 
 func (in *Interpreter) begin(ctx context.Context, n int, code, cellID string, out Output) *run {
@@ -42,6 +40,7 @@ func (in *Interpreter) begin(ctx context.Context, n int, code, cellID string, ou
 	r.ctx, r.cancel = context.WithCancelCause(context.WithoutCancel(ctx))
 	r.unlink = context.AfterFunc(ctx, func() { r.cancel(context.Cause(ctx)) })
 	in.current.Store(r)
+	in.vm.forget()
 	for _, n := range in.notes {
 		out.Stream("stderr", []byte(n+"\n"))
 	}

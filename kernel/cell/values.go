@@ -204,7 +204,7 @@ func (l *lowering) namedType(t *types.Named, pos token.Pos) ast.Expr {
 		x = &ast.Ident{Name: o.Name(), NamePos: pos}
 	case l.slot(o) != "":
 		x = &ast.Ident{Name: l.slot(o), NamePos: pos}
-	case o.Pkg().Path() == "main" && o.Parent() != nil && l.body0 != nil && o.Parent() != o.Pkg().Scope():
+	case o.Pkg().Path() == "main" && o.Parent() != nil && l.funcBody != nil && o.Parent() != o.Pkg().Scope():
 		x = &ast.Ident{Name: o.Name(), NamePos: pos}
 	case o.Pkg().Path() == "main":
 		l.fail(pos, "%s is declared inside a function or block; declare it at the top level of a cell to keep its values", o.Name())

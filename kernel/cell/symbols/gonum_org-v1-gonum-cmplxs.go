@@ -44,7 +44,6 @@ func init() {
 		"Norm":         reflect.ValueOf(cmplxs.Norm),
 		"Prod":         reflect.ValueOf(cmplxs.Prod),
 		"Real":         reflect.ValueOf(cmplxs.Real),
-		"Reverse":      reflect.ValueOf(cmplxs.Reverse),
 		"Same":         reflect.ValueOf(cmplxs.Same),
 		"Scale":        reflect.ValueOf(cmplxs.Scale),
 		"ScaleReal":    reflect.ValueOf(cmplxs.ScaleReal),

@@ -23,7 +23,6 @@ func init() {
 		"Radial":       reflect.ValueOf(palette.Radial),
 		"Rainbow":      reflect.ValueOf(palette.Rainbow),
 		"Red":          reflect.ValueOf(palette.Red),
-		"Reverse":      reflect.ValueOf(palette.Reverse),
 		"Yellow":       reflect.ValueOf(palette.Yellow),
 
 		// type definitions

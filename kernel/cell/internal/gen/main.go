@@ -59,6 +59,9 @@ var gonum = []string{
 	"gonum.org/v1/plot/vg/vgsvg",
 }
 
+// deprecated matches what gonum has replaced by the standard library.
+const deprecated = "^Reverse$"
+
 // unserved are packages of yaegi's table that make no sense in a cell, or that let it end the kernel unseen.
 var unserved = []string{
 	"github.com/", "expvar", "flag", "debug/", "go/importer", "log/syslog", "net/http/cgi", "net/http/fcgi", "net/http/pprof",
@@ -141,7 +144,7 @@ func extract(pattern string, paths []string) error {
 			return err
 		}
 	}
-	cmd := exec.Command("go", append([]string{"tool", "yaegi", "extract", "-name", "symbols"}, paths...)...)
+	cmd := exec.Command("go", append([]string{"tool", "yaegi", "extract", "-name", "symbols", "-exclude", deprecated}, paths...)...)
 	cmd.Dir, cmd.Stderr = "symbols", os.Stderr
 	return cmd.Run()
 }
@@ -208,6 +211,7 @@ func exportData(p listed) ([]byte, error) {
 		return nil, err
 	}
 	defer f.Close()
+	//lint:ignore SA1019 the build cache holds archives until Go 1.29
 	r, err := gcexportdata.NewReader(f)
 	if err != nil {
 		return nil, fmt.Errorf("%s: %w", p.ImportPath, err)

@@ -4,10 +4,12 @@ package godoc
 import (
 	"fmt"
 	"go/ast"
+	"go/build"
 	"go/doc"
 	"go/parser"
 	"go/token"
 	"path/filepath"
+	"slices"
 	"strings"
 )
 
@@ -112,4 +114,50 @@ func head(text string, n int) string {
 		out += "\n\n" + p
 	}
 	return out
+}
+
+// Files returns the names of a folder's Go files that are no tests and build here.
+func Files(dir string) ([]string, error) {
+	p, err := build.ImportDir(dir, 0)
+	if err != nil {
+		return nil, err
+	}
+	return p.GoFiles, nil
+}
+
+// Exported returns the exported package-level names that the files declare, sorted.
+func Exported(dir string, files []string) ([]string, error) {
+	fset := token.NewFileSet()
+	seen := map[string]bool{}
+	for _, name := range files {
+		f, err := parser.ParseFile(fset, filepath.Join(dir, name), nil, parser.SkipObjectResolution)
+		if err != nil {
+			return nil, err
+		}
+		for _, d := range f.Decls {
+			switch d := d.(type) {
+			case *ast.FuncDecl:
+				seen[d.Name.Name] = seen[d.Name.Name] || d.Recv == nil
+			case *ast.GenDecl:
+				for _, s := range d.Specs {
+					switch s := s.(type) {
+					case *ast.TypeSpec:
+						seen[s.Name.Name] = true
+					case *ast.ValueSpec:
+						for _, id := range s.Names {
+							seen[id.Name] = true
+						}
+					}
+				}
+			}
+		}
+	}
+	var names []string
+	for n, ok := range seen {
+		if ok && ast.IsExported(n) {
+			names = append(names, n)
+		}
+	}
+	slices.Sort(names)
+	return names, nil
 }
