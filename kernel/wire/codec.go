@@ -9,6 +9,7 @@ import (
 	"strconv"
 	"sync/atomic"
 	"time"
+	"unicode/utf8"
 )
 
 // Version is the version of the messaging protocol that the kernel speaks.
@@ -124,7 +125,8 @@ func (c *codec) decode(routed int, frames [][]byte) (*Message, error) {
 		return nil, err
 	}
 	for i, name := range []string{"header", "parent header", "metadata", "content"} {
-		if part := bytes.TrimLeft(rest[1+i], " \t\r\n"); len(part) == 0 || part[0] != '{' || !json.Valid(part) {
+		part := bytes.TrimLeft(rest[1+i], " \t\r\n")
+		if len(part) == 0 || part[0] != '{' || !utf8.Valid(part) || !json.Valid(part) {
 			return nil, fmt.Errorf("malformed: the %s is no JSON object", name)
 		}
 	}

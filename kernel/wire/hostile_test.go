@@ -209,7 +209,7 @@ func TestVanishingPeers(t *testing.T) {
 
 // A subscriber that does not read keeps nothing from one that does, and is dropped when its backlog is full.
 func TestStuckSubscriber(t *testing.T) {
-	s, _ := listen(t, tcp())
+	s, l := listen(t, tcp())
 	stuck := greeted(t, s, IOPub, zmq4.Sub, "")
 	stuck.send(wireFrame(0, "\x01"))
 	k := dialServer(t, s)
@@ -243,6 +243,11 @@ func TestStuckSubscriber(t *testing.T) {
 	}
 	if n := len(s.doors[IOPub].present()); n != 1 {
 		t.Errorf("%d subscribers are held, want only the one that reads", n)
+	}
+	for end := time.Now().Add(5 * time.Second); !strings.Contains(l.String(), errFull.Error()); time.Sleep(time.Millisecond) {
+		if time.Now().After(end) {
+			t.Fatalf("the log does not say why: %s", l)
+		}
 	}
 }
 

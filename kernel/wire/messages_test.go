@@ -64,6 +64,7 @@ func TestDroppedMessages(t *testing.T) {
 		{"content deep", func() [][]byte {
 			return resign(change(5, `{"a":`+strings.Repeat("[", 20000)+strings.Repeat("]", 20000)+"}"))
 		}, "the content is no JSON object"},
+		{"header no UTF-8", func() [][]byte { return resign(change(2, "{\"msg_id\":\"\xff\",\"msg_type\":\"x\"}")) }, "the header is no JSON object"},
 		{"metadata null", func() [][]byte { return resign(change(4, "null")) }, "the metadata is no JSON object"},
 		{"no msg_id", func() [][]byte { return resign(change(2, `{"msg_type":"x"}`)) }, "without msg_id"},
 		{"no msg_type", func() [][]byte { return resign(change(2, `{"msg_id":"x"}`)) }, "without msg_id"},

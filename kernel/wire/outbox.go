@@ -107,33 +107,28 @@ func (o *outbox) add(p []byte) {
 	}
 }
 
-// await waits, with mu held, while the backlog is full and the peer reads fast enough; a peer that does not is given up.
+// await waits, with mu held, while the backlog is full and the peer reads fast enough; a peer that does not is given up,
+// and on a channel that has no patience any peer whose backlog is full.
 func (o *outbox) await() {
-	for o.err == nil {
-		if o.size < o.limits.backlog {
-			if o.full && o.size < o.limits.backlog/2 {
-				o.full = false
-			}
-			return
-		}
+	for o.err == nil && o.size >= o.limits.backlog {
 		now := time.Now()
 		if !o.full {
 			o.full, o.since, o.before = true, now, o.taken
 		}
-		if now.Sub(o.since) >= patience {
-			if o.taken-o.before < leastTaken {
-				o.fail(errFull)
-				return
-			}
-			o.since, o.before = now, o.taken
-		}
-		if !o.limits.patient {
+		late := now.Sub(o.since) >= patience
+		if !o.limits.patient || late && o.taken-o.before < leastTaken {
 			o.fail(errFull)
 			return
+		}
+		if late {
+			o.since, o.before = now, o.taken
 		}
 		wake := time.AfterFunc(o.since.Add(patience).Sub(now), o.changed.Broadcast)
 		o.changed.Wait()
 		wake.Stop()
+	}
+	if o.size < o.limits.backlog/2 {
+		o.full = false
 	}
 }
 
@@ -195,6 +190,13 @@ func (o *outbox) drained() bool {
 	o.mu.Lock()
 	defer o.mu.Unlock()
 	return o.size == 0
+}
+
+// gaveUp reports whether the connection was given up because its peer does not read.
+func (o *outbox) gaveUp() bool {
+	o.mu.Lock()
+	defer o.mu.Unlock()
+	return errors.Is(o.err, errFull)
 }
 
 // close gives the connection up without a complaint.

@@ -38,6 +38,9 @@ func (p *peer) Read(b []byte) (int, error) {
 			p.door.subscribed(p)
 		}
 		if err := p.next(); err != nil {
+			if p.out.gaveUp() {
+				err = errFull
+			}
 			if !errors.Is(err, io.EOF) && !errors.Is(err, net.ErrClosed) {
 				p.door.refused(p.RemoteAddr(), err)
 			}

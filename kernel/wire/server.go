@@ -57,15 +57,15 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 
 // open starts to listen.
 func (s *Server) open(ch Channel, l *lobby) error {
-	kind, limits := zmq4.Router, requestLimits
+	kind, bounds := zmq4.Router, requestLimits
 	switch ch {
 	case IOPub:
-		kind, limits = zmq4.Pub, broadcastLimits
+		kind, bounds = zmq4.Pub, broadcastLimits
 	case Heartbeat: // a router echoes its clients side by side; a replier would wait for one that is lost
-		limits = heartbeatLimits
+		bounds = heartbeatLimits
 	}
 	network, address := s.at.address(ch)
-	d, err := openDoor(network, address, kind, limits)
+	d, err := openDoor(network, address, kind, bounds)
 	if err != nil {
 		return err
 	}
