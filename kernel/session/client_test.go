@@ -4,7 +4,6 @@ import (
 	"context"
 	"encoding/json"
 	"fmt"
-	"io"
 	"log/slog"
 	"regexp"
 	"strings"
@@ -51,26 +50,15 @@ func plain(text string) plotting.Bundle {
 	return plotting.Bundle{Data: map[string]any{"text/plain": text}}
 }
 
-// logged collects what a kernel logs.
-type logged struct {
-	mu   sync.Mutex
-	text strings.Builder
-}
-
-func (l *logged) Write(p []byte) (int, error) {
-	l.mu.Lock()
-	defer l.mu.Unlock()
-	return l.text.Write(p)
-}
-
 // serve starts a kernel in this process, on an interpreter of the test, and returns a front end of it.
 func serve(t testing.TB, in interpreter) (*kernel, *client) {
 	t.Helper()
-	server, err := wire.Listen(wire.Connection{Transport: "tcp", IP: "127.0.0.1", Key: "secret"}, slog.New(slog.NewTextHandler(io.Discard, nil)))
+	log := slog.New(slog.DiscardHandler)
+	server, err := wire.Listen(wire.Connection{Transport: "tcp", IP: "127.0.0.1", Key: "secret"}, log)
 	if err != nil {
 		t.Fatal(err)
 	}
-	k := newKernel(server, slog.New(slog.NewTextHandler(&logged{}, nil)), func() (interpreter, error) { return in, nil })
+	k := newKernel(server, log, func() (interpreter, error) { return in, nil })
 	k.exit = func(int) { panic("a test must not end the process") }
 	ctx, cancel := context.WithCancel(context.Background())
 	ended := make(chan struct{})

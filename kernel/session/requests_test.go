@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"log/slog"
 	"strings"
 	"testing"
 	"time"
@@ -227,5 +228,19 @@ func TestShutdown(t *testing.T) {
 				}
 			})
 		}
+	}
+}
+
+// A kernel without an interpreter ends and says why.
+func TestNoInterpreter(t *testing.T) {
+	log := slog.New(slog.DiscardHandler)
+	server, err := wire.Listen(wire.Connection{Transport: "tcp", IP: "127.0.0.1"}, log)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer server.Close()
+	k := newKernel(server, log, func() (interpreter, error) { return nil, errors.New("out of order") })
+	if err := k.run(context.Background()); err == nil || err.Error() != "session: no interpreter: out of order" {
+		t.Errorf("run ends with %v", err)
 	}
 }
