@@ -116,6 +116,9 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 	var content any
 	if err != nil {
 		f := failure("error", err)
+		if context.Cause(ctx) == errInterrupted {
+			f.Name = "interrupted" // whatever it was that the interrupt made fail
+		}
 		shown := f
 		shown.Status = ""
 		out.send("error", shown)

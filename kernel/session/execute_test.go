@@ -215,6 +215,7 @@ func TestInterrupt(t *testing.T) {
 // An interrupt while nothing runs does not hit the next cell.
 func TestInterruptWhileIdle(t *testing.T) {
 	_, c := serveCells(t)
+	c.execute("1", nil)
 	for range 5 {
 		c.ask(wire.Control, "interrupt_request", nil)
 		if reply, _ := c.execute("1", nil); reply["status"] != "ok" {

@@ -19,14 +19,17 @@ const (
 // Nothing on the wire says which subscription belongs to which client. A new client takes the oldest fresh subscription
 // that no other has taken, and one that was held in vain takes the next that comes. Only its own requests are held.
 type lobby struct {
-	out *Queue[*Message]
-
 	mu    sync.Mutex
-	known map[string]bool       // clients let through; guarded by mu
-	held  map[string][]*Message // guarded by mu
-	line  []string              // clients held, in their order; guarded by mu
-	fresh []subscription        // that no client has taken, oldest first; guarded by mu
-	vain  []time.Time           // when clients were let through without one, oldest first; guarded by mu
+	known map[string]bool      // clients let through; guarded by mu
+	held  map[string][]arrival // guarded by mu
+	line  []string             // clients held, in their order; guarded by mu
+	fresh []subscription       // that no client has taken, oldest first; guarded by mu
+	vain  []time.Time          // when clients were let through without one, oldest first; guarded by mu
+}
+
+type arrival struct {
+	message *Message
+	to      *Queue[*Message]
 }
 
 type subscription struct {
@@ -34,24 +37,25 @@ type subscription struct {
 	at time.Time
 }
 
-func newLobby(out *Queue[*Message]) *lobby {
-	return &lobby{out: out, known: map[string]bool{}, held: map[string][]*Message{}}
+func newLobby() *lobby {
+	return &lobby{known: map[string]bool{}, held: map[string][]arrival{}}
 }
 
-// put lets a message through or holds it.
-func (l *lobby) put(m *Message) {
+// put lets a message through to its queue or holds it. A client is known by its first routing frame, which front ends
+// choose alike for all their channels.
+func (l *lobby) put(to *Queue[*Message], m *Message) {
 	client := string(m.Identities[0])
 	l.mu.Lock()
 	defer l.mu.Unlock()
 	if l.known[client] {
-		l.out.Put(m)
+		to.Put(m)
 		return
 	}
 	if held, ok := l.held[client]; ok {
-		l.held[client] = append(held, m)
+		l.held[client] = append(held, arrival{m, to})
 		return
 	}
-	l.held[client] = []*Message{m}
+	l.held[client] = []arrival{{m, to}}
 	l.line = append(l.line, client)
 	for len(l.fresh) > 0 && time.Since(l.fresh[0].at) > freshFor {
 		l.fresh = l.fresh[1:]
@@ -104,7 +108,9 @@ func (l *lobby) release(client string) bool {
 	if !ok {
 		return false
 	}
-	l.out.Put(held...)
+	for _, a := range held {
+		a.to.Put(a.message)
+	}
 	delete(l.held, client)
 	l.line = slices.DeleteFunc(l.line, func(s string) bool { return s == client })
 	if len(l.known) == maxKnown {

@@ -179,7 +179,7 @@ func TestNewClientHearsItsFirstStatus(t *testing.T) {
 	s, _ := listen(t, tcp())
 	mirror(s)
 	for i := range 100 {
-		p := greeted(t, s, Shell, zmq4.Dealer, fmt.Sprint("client", i))
+		p := greeted(t, s, []Channel{Shell, Control}[i%2], zmq4.Dealer, fmt.Sprint("client", i))
 		sub := connect(t, s, IOPub)
 		p.send(signed(t, s, `{}`)) // before the subscriber has so much as greeted
 		sub.send(greeting, ready(zmq4.Sub, ""), wireFrame(0, "\x01"))
@@ -203,10 +203,10 @@ func TestLobby(t *testing.T) {
 		}
 		return ids
 	}
-	l := newLobby(out)
-	l.put(from("a"))
-	l.put(from("b"))
-	l.put(from("a"))
+	l := newLobby()
+	l.put(out, from("a"))
+	l.put(out, from("b"))
+	l.put(out, from("a"))
 	if got := passed(); got != "" {
 		t.Fatalf("let through without a subscription: %s", got)
 	}
@@ -214,7 +214,7 @@ func TestLobby(t *testing.T) {
 	if got := passed(); got != "aa" {
 		t.Errorf("first subscription lets %q through, want a's two", got)
 	}
-	l.put(from("a"))
+	l.put(out, from("a"))
 	l.subscribed(2)
 	if got := passed(); got != "ab" {
 		t.Errorf("%q, want a (known) and b (second subscription)", got)
@@ -222,8 +222,8 @@ func TestLobby(t *testing.T) {
 	l.subscribed(3)
 	l.subscribed(4)
 	l.left(4)
-	l.put(from("c"))
-	l.put(from("d"))
+	l.put(out, from("c"))
+	l.put(out, from("d"))
 	if got := passed(); got != "c" {
 		t.Errorf("%q, want c, which came after its subscription", got)
 	}
@@ -233,7 +233,7 @@ func TestLobby(t *testing.T) {
 		t.Error("a client without a subscription is held for ever")
 	}
 	l.subscribed(5) // d's, which came late
-	l.put(from("e"))
+	l.put(out, from("e"))
 	if got := passed(); got != "" {
 		t.Errorf("%q is let through on another's subscription", got)
 	}

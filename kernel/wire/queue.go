@@ -19,12 +19,12 @@ type Queue[T any] struct {
 // NewQueue returns an empty queue.
 func NewQueue[T any]() *Queue[T] { return &Queue[T]{ready: make(chan struct{}, 1)} }
 
-// Put appends items; after [Queue.End] it does nothing.
-func (q *Queue[T]) Put(items ...T) {
+// Put appends an item; after [Queue.End] it does nothing.
+func (q *Queue[T]) Put(item T) {
 	q.mu.Lock()
 	defer q.mu.Unlock()
 	if !q.ended {
-		q.items = append(q.items, items...)
+		q.items = append(q.items, item)
 		q.wake()
 	}
 }

@@ -35,7 +35,7 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 	for i := range s.inbox {
 		s.inbox[i] = NewQueue[*Message]()
 	}
-	lobby := newLobby(s.inbox[Shell])
+	lobby := newLobby()
 	for _, ch := range channels { // all of them before anybody is let in
 		if err := s.open(ch, lobby); err != nil {
 			s.Close()
@@ -49,8 +49,14 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 		}
 	}
 	go s.receive(Shell, lobby.put)
-	go s.receive(Control, func(m *Message) { s.inbox[Control].Put(m) })
-	go s.receive(Stdin, func(m *Message) { s.inbox[Stdin].Put(m) })
+	go s.receive(Control, func(to *Queue[*Message], m *Message) {
+		if m.Type == "interrupt_request" || m.Type == "shutdown_request" {
+			to.Put(m) // these are for now, and often from somebody who listens to nothing
+			return
+		}
+		lobby.put(to, m)
+	})
+	go s.receive(Stdin, (*Queue[*Message]).Put)
 	go s.echo()
 	return s, nil
 }
@@ -108,7 +114,7 @@ func (s *Server) start(ch Channel) error {
 }
 
 // receive decodes what comes on a channel until the server is closed.
-func (s *Server) receive(ch Channel, put func(*Message)) {
+func (s *Server) receive(ch Channel, put func(*Queue[*Message], *Message)) {
 	for {
 		raw, err := s.sockets[ch].Recv()
 		if err != nil { // only after Close, and then for ever
@@ -120,7 +126,7 @@ func (s *Server) receive(ch Channel, put func(*Message)) {
 			s.log.warn("message dropped", "channel", ch.String(), "why", err.Error())
 			continue
 		}
-		put(m)
+		put(s.inbox[ch], m)
 	}
 }
 
