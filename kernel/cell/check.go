@@ -87,7 +87,11 @@ func (in *Interpreter) check(src *source, p *plan) (*unit, error) {
 	// Second pass: statements.
 	second := in.scope(own, u.imports)
 	u.insert(second)
-	if n := len(src.fn.Body.List); n > 0 {
+	if src.list != nil {
+		param := types.NewParam(token.NoPos, second, "", types.NewSlice(types.Universe.Lookup("any").Type()))
+		second.Scope().Insert(types.NewFunc(token.NoPos, second, valuesName, types.NewSignatureType(nil, nil, nil, types.NewTuple(param), nil, true)))
+	}
+	if n := len(src.fn.Body.List); n > 0 && src.list == nil {
 		if x, ok := src.fn.Body.List[n-1].(*ast.ExprStmt); ok {
 			u.last = x.X
 		}

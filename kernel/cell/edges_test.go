@@ -44,7 +44,7 @@ func TestEdges(t *testing.T) {
 			"func f() string { return \"s\" }", "", "g()", "12", "f()", "s",
 		}},
 		{"4 methods see a redefined function", []string{
-			"func f() int { return 1 }\ntype T int\nfunc (t T) M() int { return f() + int(t) }\nx := T(10)\nfunc use() int { return x.M() }", "", "use()", "11", "func f() int { return 2 }", "", "use(), ", "error: ", "use()", "12",
+			"func f() int { return 1 }\ntype T int\nfunc (t T) M() int { return f() + int(t) }\nx := T(10)\nfunc use() int { return x.M() }", "", "use()", "11", "func f() int { return 2 }", "", "use()", "12",
 			"const k = 3\nfunc g() int { return k }", "", "const k = 4", "", "g()", "4",
 		}},
 		{"4 a function of a variable with a new type", []string{
@@ -110,6 +110,8 @@ func TestEdges(t *testing.T) {
 		}},
 		{"16 generic functions of packages are refused", []string{"import \"slices\"\nslices.Sort([]int{2, 1})", "error: cell[1]:2:1: slices.Sort is not available"}},
 		{"23 unexported fields in JSON are a limit", []string{"import \"encoding/json\"\ntype t struct{ A, b int }\nout, err := json.Marshal(t{1, 2})\nstring(out)", `{"A":1,"Xb":2}`}},
+		{"14 a last line of several values", []string{"1, \"a\"", "1 a", "x := []int{1}\nx, len(x), math.Sqrt(4) // both", "[1] 1 2", "x, y", "error: cell[3]:1:4: undefined: y", "x, 1 = 2", "error: cell[4]:1:"}},
+		{"19 a cell that ends too early", []string{"x := 1\nfor {", "error: cell[1]:2:6: the cell ends too early: expected '}'"}},
 		{"14 several values", []string{"func f() (int, string) { return 1, \"a\" }\nf()", "1 a"}},
 		{"18 a named result and := of it", []string{"func one() (int, error) { return 1, fmt.Errorf(\"bad\") }", "", "func f() (i int, err error) {\n\tr, err := one()\n\ti = r\n\treturn\n}\nv, e := f()\nfmt.Println(v, e)", "1 bad\n"}},
 		{"19 overflow", []string{"uint8(200) + 100", "error: cell[1]:1:"}},

@@ -195,7 +195,10 @@ func (l *lowering) body(fn *ast.FuncDecl) {
 	if len(fn.Body.List) == 0 {
 		return
 	}
-	if l.u.last != nil {
+	switch {
+	case l.u.src.list != nil:
+		l.showList(fn)
+	case l.u.last != nil:
 		l.show(fn)
 	}
 	var list []ast.Stmt
@@ -265,6 +268,15 @@ func (l *lowering) show(fn *ast.FuncDecl) {
 	}
 	l.p.printed = l.prints(s.X)
 	s.X = l.hook("Show", s.X.Pos(), s.X)
+}
+
+// showList shows the values of a last line a, b.
+func (l *lowering) showList(fn *ast.FuncDecl) {
+	s := fn.Body.List[len(fn.Body.List)-1].(*ast.ExprStmt)
+	for _, x := range l.u.src.list.Args {
+		l.p.shown = append(l.p.shown, types.Default(l.u.info.TypeOf(x)))
+	}
+	s.X = l.hook("Show", s.X.Pos(), l.u.src.list.Args...)
 }
 
 // hook is a call of this package from a lowered cell.

@@ -12,6 +12,8 @@ const (
 	mark   = "ǀ"        // x + mark + generation
 	kernel = "k" + mark // the package by which lowered cells call this one
 
+	valuesName = kernel + "values" // the function of source.list, which only the checker sees
+
 	asError = kernel + "error" // a function of the interpreter that makes an error of its argument
 )
 

@@ -17,6 +17,7 @@ type source struct {
 	text  string
 	decls []*decl
 	fn    *ast.FuncDecl // the statements, as the body of a function
+	list  *ast.CallExpr // a last line of several values, as a call of a function that takes them
 }
 
 // decl is one top-level declaration with all that is needed to compile it again.
@@ -39,12 +40,16 @@ func parse(fset *token.FileSet, n int, text string) (*source, error) {
 	src := &source{n: n, text: text}
 	var errs scanner.ErrorList
 	statements := []byte(text)
-	for _, c := range split(text) {
+	chunks := split(text)
+	for i, c := range chunks {
 		if c.kind == token.PACKAGE {
 			line, column := place(text, c.start)
-			errs.Add(token.Position{Filename: file(n), Line: line, Column: column}, "a cell has no package clause")
+			return nil, scanner.ErrorList{{Pos: token.Position{Filename: file(n), Line: line, Column: column}, Msg: "a cell has no package clause"}}
 		}
 		if c.kind == token.ILLEGAL {
+			if i == len(chunks)-1 && src.values(fset, c) {
+				blank(statements[c.start:c.end])
+			}
 			continue
 		}
 		blank(statements[c.start:c.end])
@@ -63,8 +68,7 @@ func parse(fset *token.FileSet, n int, text string) (*source, error) {
 		errs = add(errs, err)
 	}
 	if len(errs) > 0 {
-		errs.Sort()
-		return nil, errs
+		return nil, inside(errs, n, text)
 	}
 	if len(f.Decls) != 1 {
 		// A closing bracket too many ends the function early.
@@ -72,7 +76,60 @@ func parse(fset *token.FileSet, n int, text string) (*source, error) {
 		return nil, scanner.ErrorList{{Pos: at, Msg: "unexpected }: it closes nothing"}}
 	}
 	src.fn = f.Decls[0].(*ast.FuncDecl)
+	if src.list != nil {
+		src.fn.Body.List = append(src.fn.Body.List, &ast.ExprStmt{X: src.list})
+	}
 	return src, nil
+}
+
+// values parses a last line "a, b", which is no Go but says what it means: show both.
+func (s *source) values(fset *token.FileSet, c chunk) bool {
+	piece := s.text[c.start:c.end]
+	depth, commas, end := 0, 0, 0
+	for _, it := range tokens(piece) {
+		if it.tok != token.SEMICOLON {
+			end = it.end // before a comment
+		}
+		switch it.tok {
+		case token.LPAREN, token.LBRACE, token.LBRACK:
+			depth++
+		case token.RPAREN, token.RBRACE, token.RBRACK:
+			depth--
+		case token.COMMA:
+			if depth == 0 {
+				commas++
+			}
+		case token.ASSIGN, token.DEFINE, token.SEMICOLON:
+			if depth == 0 && it.lit != "\n" {
+				return false
+			}
+		}
+	}
+	if commas == 0 || strings.HasSuffix(piece[:end], ",") {
+		return false
+	}
+	line, column := place(s.text, c.start)
+	header := fmt.Sprintf("package main; var _ = %s(/*line %s:%d:%d*/", valuesName, fileBase, line, column)
+	f, err := parser.ParseFile(fset, file(s.n), header+piece[:end]+")", parser.SkipObjectResolution)
+	if err != nil {
+		return false
+	}
+	s.list, _ = f.Decls[0].(*ast.GenDecl).Specs[0].(*ast.ValueSpec).Values[0].(*ast.CallExpr)
+	return s.list != nil && !s.list.Ellipsis.IsValid()
+}
+
+// inside keeps the errors in the cell's text: what the parser says behind its end means that the end came too early, and
+// matters only if nothing else is wrong.
+func inside(errs scanner.ErrorList, n int, text string) error {
+	errs.Sort()
+	end := strings.Count(text, "\n") + 1
+	kept := slices.DeleteFunc(slices.Clone(errs), func(e *scanner.Error) bool { return e.Pos.Line > end })
+	if len(kept) > 0 {
+		return kept
+	}
+	line, column := place(text, len(strings.TrimRight(text, " \t\r\n")))
+	msg := strings.TrimSuffix(errs[0].Msg, ", found 'EOF'")
+	return scanner.ErrorList{{Pos: token.Position{Filename: file(n), Line: line, Column: column}, Msg: "the cell ends too early: " + msg}}
 }
 
 // parse parses the declaration's text, anew each time, since the lowering changes the tree.
