@@ -12,19 +12,25 @@ import (
 // Costs in nanoseconds, measured on one core of the kind of machine that this was written on. They only choose between
 // routes.
 const (
-	lagCost   = 0.5 // one lag at one frequency
-	rankCost  = 3.0 // one product of the triangular solve at one frequency
-	startCost = 250 // a resolvent at one frequency, whatever its rank
+	lagCost   = 0.5  // one lag at one frequency
+	edgeCost  = 1.5  // one edge in one step of the recursion
+	basisCost = 1.5  // one number in the basis of a resolvent, for each of its directions
+	startCost = 250  // a resolvent at one frequency, whatever its rank
+	rankCost  = 2.5  // one product of the triangular solve at one frequency
+	points    = 1001 // frequencies that a spectrum is usually wanted at
 )
 
 // Limits of the routes: products of the recursion that are spent before long memories are tried as a resolvent of any
-// rank, products that are spent at all, lags that are kept, the rank of a resolvent, and the numbers in its basis.
+// rank, products that are spent at all, lags that are kept, the rank of a resolvent, the numbers in its basis, and its
+// rank once the largest was tried in vain.
 const (
 	easyWork = 3e8
 	hardWork = 2e10
 	mostLags = 1 << 21
 	mostRank = 1500
 	mostCell = 3e7
+
+	laterRank = 256
 )
 
 // spectral computes the form of a process; at least the first lags of it as lags.
@@ -61,15 +67,18 @@ func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 			}
 			if lags >= check {
 				check = 2 * lags
+				if lags > 500 {
+					check = 4 * lags
+				}
 				rest, err := a.resolve(ctx, q, bound)
 				if err != nil || rest != nil {
 					return newForm(p.width, a.lags, rest), err
 				}
 			}
 		}
-		if lags > mostLags || a.work > hardWork {
-			return nil, fmt.Errorf("spectrum: a machine of %d states and %d edges is too large for either route: its memory is longer than %d symbols, and the slow part of it has a rank above %d",
-				p.machine.states, len(p.machine.edges), lags, a.rank())
+		if a.large && (float64(lags)+a.left > mostLags || a.work*(1+a.left/float64(lags)) > hardWork) {
+			return nil, fmt.Errorf("spectrum: a machine of %d states and %d edges is too large for either route: it would take about %.0f lags (at most %d, fewer for so many edges), and what is left after %d has a rank above %d",
+				p.machine.states, len(p.machine.edges), float64(lags)+a.left, mostLags, lags, a.rank())
 		}
 		a.step(q)
 	}
@@ -88,6 +97,7 @@ type autocorr struct {
 	work  float64 // products so far
 	tried float64 // bound at the last attempt to resolve
 	at    int     // and the step of it
+	left  float64 // lags that are still needed, as the decay lets expect
 	large bool    // a resolvent of any rank was tried
 }
 
@@ -194,19 +204,28 @@ func (a *autocorr) rank() int {
 	return min(a.p.machine.states, mostRank, int(mostCell)/a.p.machine.states)
 }
 
+// resolventWork estimates the nanoseconds of making a resolvent of a rank and using it at the usual number of points.
+func (a *autocorr) resolventWork(rank int) float64 {
+	n := float64(rank)
+	return basisCost*n*n*float64(len(a.next)) + points*resolventCost(rank, len(a.f))
+}
+
 // resolve tries to end the sum after q steps with a resolvent, if that is cheaper than what the decay since the last
 // attempt lets expect of going on; it returns nil if not.
 func (a *autocorr) resolve(ctx context.Context, q int, bound float64) (*resolvent, error) {
 	rank := 0
 	if a.tried > 0 {
 		rate := math.Log(a.tried/bound) / float64(q-a.at)
-		left := math.Log(bound/(1e-17*a.power())) / max(rate, 1e-9) * float64(a.p.length)
-		for rank < a.rank() && resolventCost(rank+1, len(a.f)) < left*lagCost {
+		a.left = math.Log(bound/(1e-17*a.power())) / max(rate, 1e-9) * float64(a.p.length)
+		most := a.left * (points*lagCost + edgeCost*float64(len(a.step1.to)*len(a.f)))
+		for rank < a.rank() && a.resolventWork(rank+1) < most {
 			rank++
 		}
 	}
 	a.tried, a.at = bound, q
-	if a.work > easyWork && !a.large {
+	if a.large {
+		rank = min(rank, laterRank)
+	} else if a.work > easyWork || a.left > mostLags {
 		a.large = true
 		rank = a.rank()
 	}

@@ -195,8 +195,12 @@ func TestSamePulseOtherwise(t *testing.T) {
 			return pulse.Scaled(pulse.Rect(1), next)
 		}},
 	}
-	for _, code := range []*linecode.Code{linecode.AMI().Fed(source.Biased(0.3)), linecode.HDB3(), linecode.Code8b10b(), linecode.CMI(), linecode.MLT3()} {
+	second := scripted(t, 1, func(s int, word uint) (int, []float64) { // its null is of order 2
+		return s<<1&3 | int(word), []float64{float64(word) - 2*float64(s&1) + float64(s>>1)}
+	})
+	for _, code := range []*linecode.Code{linecode.AMI().Fed(source.Biased(0.3)), linecode.HDB3(), linecode.Code8b10b(), linecode.CMI(), linecode.MLT3(), second} {
 		want := must(spectrum.Exact(code, pulse.Train{}))
+		trains["two halves"] = pulse.Train{Shapes: map[float64]pulse.Shape{code.Levels()[0]: halves}}
 		for name, train := range trains {
 			got := must(spectrum.Exact(code, train))
 			for _, nu := range append(frequencies, 1e-9, 1e-7, 1e-5, 1e-3, 0.02, 0.05) {

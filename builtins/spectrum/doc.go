@@ -16,9 +16,11 @@
 //
 //	S(f) = T sum over i, j of conj(H_i) H_j sum over l of R_ij(l) exp(-2 pi j nu l),   nu = f T,
 //
-// with R the autocovariance (autocorr.go, form.go). Short memories are summed lag by lag; long ones end in a resolvent
-// on the few directions that are left (resolvent.go). Where the density vanishes at 0 Hz the process is replaced by its
-// running sums, which keeps the digits (null.go). Data that repeat give tones only (periodic.go, dft.go).
+// with R the autocovariance (autocorr.go, form.go). Short memories are summed lag by lag; a process of small rank is a
+// ratio of two short series (rational.go); other long memories end in a resolvent on the directions that are left
+// (resolvent.go). Where the density vanishes at 0 Hz the process is replaced by its running sums, which keeps the digits
+// (null.go). Data that repeat give tones only (periodic.go, dft.go). Bands are integrated by Gauss rules whose sum is
+// held against the mean square of the time domain (power.go).
 //
 // Sources: W. R. Bennett, "Statistics of regenerative digital transmission", Bell Syst. Tech. J. 37 (1958) 1501-1542;
 // G. L. Cariolaro and G. P. Tronca, "Spectra of block coded digital signals", IEEE Trans. Commun. COM-22 (1974)

@@ -8,14 +8,13 @@ package spectrum
 //
 // R_ij(-l) = R_ji(l), so each pair i < j needs a series of cosines and one of sines.
 type form struct {
-	width  int
-	lags   [][]float64 // lags[i*width+j][l] = R_ij(l) for l >= 0, as far as it was summed
-	even   []series    // of pairs i <= j, row by row
-	odd    []series    // of pairs i < j in the same order; unused entries are empty
-	rest   *resolvent  // what the lags leave; nil if that is nothing
-	under  series      // of cosines of length times t: the form is the series over this one; empty if over 1
-	length int
-	lift   int // the form is that of running sums: it takes (2 sin(t/2))^2 to this power
+	width int
+	lags  [][]float64 // lags[i*width+j][l] = R_ij(l) for l >= 0, as far as it was summed
+	even  []series    // of pairs i <= j, row by row
+	odd   []series    // of pairs i < j in the same order; unused entries are empty
+	rest  *resolvent  // what the lags leave; nil if that is nothing
+	under series      // of cosines of length times t: the form is the series over this one; empty if over 1
+	lift  int         // the form is that of running sums: it takes (2 sin(t/2))^2 to this power
 }
 
 func newForm(width int, lags [][]float64, rest *resolvent) *form {

@@ -5,17 +5,57 @@ import (
 	"fmt"
 )
 
-// periodic computes the spectrum of a class in which every state has one successor: a cycle of D symbols, whose Fourier
-// series are the tones. There is no continuous part.
-func (p *PSD) periodic(ctx context.Context, m *machine, coef [][]float64, lags int) (*part, error) {
+// single tells whether one edge leaves each state: data that repeat leave nothing to chance. Edge s then is that of
+// state s.
+func (m *machine) single() bool {
+	if len(m.edges) != m.states {
+		return false
+	}
+	for s := range m.edges {
+		if m.edges[s].from != int32(s) {
+			return false
+		}
+	}
+	return true
+}
+
+// begin is the state that the machine starts in, state 0 if it is a closed class and does not say; ok is false if chance
+// decides.
+func (m *machine) begin() (state int32, ok bool) {
+	found := 0
+	for s, p := range m.start {
+		if p > 0 {
+			state = int32(s)
+			found++
+		}
+	}
+	return state, found < 2
+}
+
+// cycle is the cycle that a machine with single edges comes to from state s.
+func (m *machine) cycle(s int32) []int32 {
+	seen := make([]bool, m.states)
+	for !seen[s] {
+		seen[s] = true
+		s = m.edges[s].to
+	}
+	states := []int32{s}
+	for t := m.edges[s].to; t != s; t = m.edges[t].to {
+		states = append(states, t)
+	}
+	return states
+}
+
+// periodic computes the spectrum of a machine with single edges that starts in state s: what it comes to repeats after
+// D symbols, and its Fourier series are the tones. There is no continuous part.
+func (p *PSD) periodic(ctx context.Context, m *machine, s int32, coef [][]float64, lags int) (*part, error) {
+	cycle := m.cycle(s)
 	symbols := 0
-	next := make([]int32, m.states) // edge that leaves each state
-	for i, e := range m.edges {
-		next[e.from] = int32(i)
-		symbols += len(e.word)
+	for _, t := range cycle {
+		symbols += len(m.edges[t].word)
 	}
 	if symbols == 0 {
-		return nil, fmt.Errorf("spectrum: the data can end in %d states that emit no symbols for ever; the waveform has no power spectrum", m.states)
+		return nil, fmt.Errorf("spectrum: the data end in %d states that emit no symbols for ever; the waveform has no power spectrum", len(cycle))
 	}
 	if symbols > mostPeriod {
 		return nil, fmt.Errorf("spectrum: the symbols repeat after %d only; the limit is %d", symbols, mostPeriod)
@@ -24,17 +64,15 @@ func (p *PSD) periodic(ctx context.Context, m *machine, coef [][]float64, lags i
 	for j := range sequences {
 		sequences[j] = make([]float64, 0, symbols)
 	}
-	for s, n := int32(0), 0; n < m.states; n++ {
+	for n, t := range cycle {
 		if n%4096 == 0 && ctx.Err() != nil {
 			return nil, context.Cause(ctx)
 		}
-		e := &m.edges[next[s]]
-		for _, w := range e.word {
+		for _, w := range m.edges[t].word {
 			for j, v := range coef[w] {
 				sequences[j] = append(sequences[j], v)
 			}
 		}
-		s = e.to
 	}
 	tones, err := newComb(ctx, sequences, lags)
 	if err != nil {

@@ -4,8 +4,10 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"runtime"
 	"strings"
 	"sync"
+	"sync/atomic"
 
 	"linewright/builtins/linecode"
 	"linewright/builtins/page"
@@ -85,6 +87,14 @@ func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
 
 // exact is for a chain that was checked.
 func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
+	p, err := analyse(ctx, ch, d)
+	if err != nil && ctx.Err() != nil {
+		return nil, interrupted(ctx)
+	}
+	return p, err
+}
+
+func analyse(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
 	m, shapes, err := read(ctx, ch, d)
 	if err != nil {
 		return nil, err
@@ -94,9 +104,11 @@ func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error
 	if p.basis, coef, err = waveforms(shapes); err != nil {
 		return nil, err
 	}
-	parts, prob, err := m.closed(ctx)
-	if err != nil {
-		return nil, err
+	parts, prob := []*machine{m}, []float64{1}
+	if _, ok := m.begin(); !ok || !m.single() {
+		if parts, prob, err = m.closed(ctx); err != nil {
+			return nil, err
+		}
 	}
 	for i, m := range parts {
 		part, err := p.class(ctx, m, coef)
@@ -152,8 +164,9 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 		}
 	}
 	lags := int(math.Ceil(far))
-	if len(m.edges) == m.states {
-		return p.periodic(ctx, m, coef, lags)
+	if m.single() {
+		s, _ := m.begin()
+		return p.periodic(ctx, m, s, coef, lags)
 	}
 	m, length, err := m.level(ctx)
 	if err != nil {
@@ -282,21 +295,41 @@ func (p *PSD) Density(dst, f []float64) []float64 {
 // block is the number of frequencies that are evaluated between two looks at the context, unless they are slow.
 const block = 252
 
-// evaluate sets dst to the two-sided density over the squared volts and the symbol period, at nu symbol rates.
+// evaluate sets dst to the two-sided density over the squared volts and the symbol period, at nu symbol rates. Slow
+// frequencies are shared out among the processors.
 func (p *PSD) evaluate(ctx context.Context, dst, nu []float64) {
-	size := block
+	size, workers := block, 1
 	for _, c := range p.parts {
-		if c.form != nil {
-			size = min(size, 1+int(2e7/c.form.cost()))
+		if c.form == nil {
+			continue
+		}
+		if cost := c.form.cost(); cost > 1e4 {
+			size, workers = min(size, 1+int(1e7/cost)), runtime.NumCPU()
 		}
 	}
-	w := newWorkspace(min(size, len(dst)))
-	for len(dst) > 0 {
-		stop(ctx)
-		n := min(size, len(dst))
-		p.some(dst[:n], nu[:n], w)
-		dst, nu = dst[n:], nu[n:]
+	workers = min(workers, (len(dst)+size-1)/size)
+	var next atomic.Int64
+	work := func() {
+		w := newWorkspace(min(size, len(dst)))
+		for ctx.Err() == nil {
+			lo := int(next.Add(int64(size))) - size
+			if lo >= len(dst) {
+				return
+			}
+			hi := min(lo+size, len(dst))
+			p.some(dst[lo:hi], nu[lo:hi], w)
+		}
 	}
+	if workers <= 1 {
+		work()
+	} else {
+		var group sync.WaitGroup
+		for range workers {
+			group.Go(work)
+		}
+		group.Wait()
+	}
+	stop(ctx)
 }
 
 // A workspace is what a block of frequencies needs.
@@ -395,6 +428,10 @@ func current() context.Context { return page.Context() }
 // stop fails the cell if it was interrupted.
 func stop(ctx context.Context) {
 	if ctx.Err() != nil {
-		panic(fmt.Errorf("spectrum: interrupted: %w", context.Cause(ctx)))
+		panic(interrupted(ctx))
 	}
+}
+
+func interrupted(ctx context.Context) error {
+	return fmt.Errorf("spectrum: interrupted: %w", context.Cause(ctx))
 }

@@ -22,7 +22,7 @@ type resolvent struct {
 	work          chan *solveSpace
 }
 
-type solveSpace struct{ b, u, w, a []complex128 }
+type solveSpace struct{ b, u, w []complex128 }
 
 // newResolvent returns nil if the subspace has more dimensions than rank.
 func newResolvent(ctx context.Context, a *autocorr, q, rank int) (*resolvent, error) {
@@ -88,7 +88,6 @@ func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int)
 		v := make([]float64, len(a.next))
 		a.step1.apply(v, basis[n], true)
 		columns = append(columns, orthogonalise(v))
-		a.work += float64(4 * len(basis) * len(v))
 	}
 	h = vectors(len(basis), len(basis))
 	for c, column := range columns {
@@ -217,7 +216,7 @@ func (r *resolvent) value(t angle, left, right []complex128) complex128 {
 		clear(s.b)
 		clear(s.u)
 	default:
-		s = &solveSpace{make([]complex128, n), make([]complex128, n), make([]complex128, n), make([]complex128, n)}
+		s = &solveSpace{make([]complex128, n), make([]complex128, n), make([]complex128, n)}
 	}
 	for k := range r.length {
 		turn := power(t, -k)
@@ -244,7 +243,7 @@ func (r *resolvent) value(t angle, left, right []complex128) complex128 {
 // A = I - zH is solved from its last row upward: two neighbouring columns combine so that the row has one entry left,
 // which gives one unknown; the larger entry is the pivot. Neither factor has to be kept.
 func (s *solveSpace) solve(columns [][]float64, z complex128) complex128 {
-	b, u, w, a := s.b, s.u, s.w, s.a
+	b, u, w := s.b, s.u, s.w
 	n := len(columns)
 	zr, zi := -real(z), -imag(z)
 	for r, v := range columns[n-1] {
@@ -254,30 +253,31 @@ func (s *solveSpace) solve(columns [][]float64, z complex128) complex128 {
 	left := u[n-1]
 	var sum complex128
 	for i := n - 1; i > 0; i-- {
-		column := columns[i-1][:i+1]
-		tip := complex(zr*column[i], zi*column[i])
-		a := a[:i]
-		for r, v := range column[:i] {
-			a[r] = complex(zr*v, zi*v)
-		}
-		a[i-1] += 1
-		w, b := w[:i+1], b[:i+1]
-		if square(w[i]) >= square(tip) {
-			f, y := tip/w[i], b[i]/w[i]
+		column := columns[i-1][:i]
+		tip := complex(zr*columns[i-1][i], zi*columns[i-1][i])
+		pivot, right := w[i], b[i]
+		w, b := w[:len(column)], b[:len(column)]
+		if square(pivot) >= square(tip) {
+			f, y := tip/pivot, right/pivot
 			sum += y * left
 			left = u[i-1] - f*left
-			for r, v := range a {
-				b[r] -= y * w[r]
-				w[r] = v - f*w[r]
+			for r, v := range column {
+				x := w[r]
+				b[r] -= y * x
+				w[r] = complex(zr*v, zi*v) - f*x
 			}
+			w[i-1] += 1
 		} else {
-			f, y := w[i]/tip, b[i]/tip
+			f, y := pivot/tip, right/tip
 			sum += y * u[i-1]
 			left -= f * u[i-1]
-			for r, v := range a {
-				b[r] -= y * v
-				w[r] -= f * v
+			for r, v := range column {
+				x := complex(zr*v, zi*v)
+				b[r] -= y * x
+				w[r] -= f * x
 			}
+			b[i-1] -= y
+			w[i-1] -= f
 		}
 	}
 	return sum + b[0]/w[0]*left
