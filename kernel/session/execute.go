@@ -89,7 +89,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 		k.publish(m, "execute_input", map[string]any{"code": *r.Code, "execution_count": n})
 	}
 	out := newOutput(k, ctx, m, r.AllowStdin)
-	k.capture.catchUp() // what was written since the last cell is still that one's
+	k.capture.settle() // what was written since the last cell is still that one's
 	k.current.Store(out)
 	if k.notice != "" {
 		out.Stream("stderr", []byte(k.notice))

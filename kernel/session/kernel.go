@@ -65,13 +65,15 @@ type kernel struct {
 
 // A capture brings what was written to the descriptors of the process to the current output.
 type capture interface {
-	catchUp() // what Go code wrote; cheap
-	settle()  // everything, at the end of a cell
+	glance()  // what Go code wrote, or nothing if that has not happened for long; before every text of the interpreter
+	catchUp() // what Go code wrote; before anything else that a cell puts out
+	settle()  // everything; between cells
 }
 
 // noCapture stands for descriptors that are left alone.
 type noCapture struct{}
 
+func (noCapture) glance()  {}
 func (noCapture) catchUp() {}
 func (noCapture) settle()  {}
 

@@ -45,7 +45,7 @@ func newOutput(k *kernel, ctx context.Context, request *wire.Message, allowStdin
 
 // Stream takes text of the interpreter. What compiled code wrote to the same descriptor before it comes first.
 func (o *output) Stream(name string, p []byte) {
-	o.k.capture.catchUp()
+	o.k.capture.glance()
 	which := 0
 	if name == streams[1] {
 		which = 1

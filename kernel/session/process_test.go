@@ -139,6 +139,7 @@ func TestDescriptors(t *testing.T) {
 		{`fmt.Fprintln(os.Stderr, "oops")`, "", "oops\n"},
 		{`import "log/slog"` + "\n" + `slog.Info("hello")`, "", "INFO hello\n"},
 		{`import "log"` + "\n" + `log.Default().Println("hello")`, "", "hello\n"},
+		{"for i := 0; i < 3000; i++ { fmt.Print(1); if i < 2 { os.Stdout.WriteString(\"2\") } }", "1212" + strings.Repeat("1", 2998), ""},
 		{`raw := os.NewFile(2, "raw")` + "\n" + `raw.WriteString("as compiled code prints\n")`, "", "as compiled code prints\n"},
 		{`for i := 0; i < 20000; i++ { os.Stdout.WriteString("0123456789\n") }`, strings.Repeat("0123456789\n", 20000), ""},
 	} {

@@ -8,6 +8,7 @@ import (
 	"os"
 	"os/signal"
 	"runtime"
+	"sync/atomic"
 	"syscall"
 
 	"linewright/kernel/cell"
@@ -98,7 +99,13 @@ type descriptors struct {
 	pipes  [2]*pipe
 	crash  *crash
 	to     func(which int, p []byte)
+	quiet  atomic.Int32 // glances since something came through the pipes, or since a cell began
 }
+
+// attentive is how many glances are real ones before most are not: a look at the pipes costs two system calls, twenty
+// times what it costs to take a line of the interpreter. A cell that writes both ways is found out before, and its text
+// is in order.
+const attentive = 1000
 
 // captureDescriptors redirects the descriptors. What comes through them waits until deliver is called.
 func captureDescriptors() (*descriptors, error) {
@@ -118,7 +125,17 @@ func captureDescriptors() (*descriptors, error) {
 func (d *descriptors) deliver(to func(which int, p []byte)) {
 	d.to = to
 	for i, p := range d.pipes {
-		p.start(func(text []byte) { to(i, text) })
+		p.start(func(text []byte) {
+			d.quiet.Store(0)
+			to(i, text)
+		})
+	}
+}
+
+// glance delivers what Go code has written so far, but looks seldom where nothing comes.
+func (d *descriptors) glance() {
+	if n := d.quiet.Add(1); n <= attentive || n%64 == 0 {
+		d.catchUp()
 	}
 }
 
@@ -132,6 +149,7 @@ func (d *descriptors) catchUp() {
 // settle delivers all that has been written so far.
 func (d *descriptors) settle() {
 	d.catchUp()
+	d.quiet.Store(0)
 	if text := d.crash.rest(); len(text) > 0 {
 		d.to(1, text)
 	}
