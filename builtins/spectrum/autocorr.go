@@ -86,19 +86,19 @@ func (p *process) spectral(ctx context.Context, first int) (*form, error) {
 
 // An autocorr is the state of the recursion.
 type autocorr struct {
-	p     *process
-	first [][]float64 // f[k*width+j] of position k and component j; nil if zero
-	f     [][]float64 // K^q f
-	u     [][]float64 // u[i*width+j]
-	size  float64     // sum of |u|
-	lags  [][]float64 // lags[i*width+j][l]
-	next  []float64
-	step1 sparse
-	work  float64 // products so far
-	tried float64 // bound at the last attempt to resolve
-	at    int     // and the step of it
-	left  float64 // lags that are still needed, as the decay lets expect
-	large bool    // a resolvent of any rank was tried
+	p      *process
+	first  [][]float64 // f[k*width+j] of position k and component j; nil if zero
+	f      [][]float64 // K^q f
+	u      [][]float64 // u[i*width+j]
+	size   float64     // sum of |u|
+	lags   [][]float64 // lags[i*width+j][l]
+	next   []float64
+	matrix sparse
+	work   float64 // products so far
+	tried  float64 // bound at the last attempt to resolve
+	at     int     // and the step of it
+	left   float64 // lags that are still needed, as the decay lets expect
+	large  bool    // a resolvent of any rank was tried
 }
 
 func newAutocorr(p *process) *autocorr {
@@ -130,7 +130,7 @@ func newAutocorr(p *process) *autocorr {
 	for n, f := range a.f {
 		a.first[n] = slices.Clone(f)
 	}
-	a.step1 = newSparse(p)
+	a.matrix = newSparse(p)
 	return a
 }
 
@@ -176,9 +176,9 @@ func (a *autocorr) step(q int) {
 		for m, u := range a.u {
 			a.lags[m%w*w+j][p.length*(q+1)+k-m/w] += floats.Dot(u, f)
 		}
-		a.step1.apply(a.next, f, recentred(q))
+		a.matrix.apply(a.next, f, recentred(q))
 		a.f[n], a.next = a.next, f
-		a.work += float64(len(a.step1.to) + len(a.u)*len(f))
+		a.work += float64(len(a.matrix.to) + len(a.u)*len(f))
 	}
 }
 
@@ -217,7 +217,7 @@ func (a *autocorr) resolve(ctx context.Context, q int, bound float64) (*resolven
 	if a.tried > 0 {
 		rate := math.Log(a.tried/bound) / float64(q-a.at)
 		a.left = math.Log(bound/(1e-17*a.power())) / max(rate, 1e-9) * float64(a.p.length)
-		most := a.left * (points*lagCost + edgeCost*float64(len(a.step1.to)*len(a.f)))
+		most := a.left * (points*lagCost + edgeCost*float64(len(a.matrix.to)*len(a.f)))
 		for rank < a.rank() && a.resolventWork(rank+1) < most {
 			rank++
 		}

@@ -13,7 +13,7 @@ type form struct {
 	even  []series    // of pairs i <= j, row by row
 	odd   []series    // of pairs i < j in the same order; unused entries are empty
 	rest  *resolvent  // what the lags leave; nil if that is nothing
-	under series      // of cosines of length times t: the form is the series over this one; empty if over 1
+	under series      // of cosines: the form is the series over this one; empty if over 1
 	lift  int         // the form is that of running sums: it takes (2 sin(t/2))^2 to this power
 }
 
@@ -106,8 +106,7 @@ func (f *form) at(t angle, h []complex128) float64 {
 	return sum * f.factor(t)
 }
 
-// scalar sets dst[i] to the form of a process of one component for h = 1. work is work
-// space.
+// scalar sets dst[i] to the form of a process of one component for h = 1; work is scratch.
 func (f *form) scalar(dst []float64, t []angle, work []float64) {
 	f.even[0].evens(dst, t)
 	if f.rest != nil {

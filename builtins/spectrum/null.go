@@ -31,10 +31,10 @@ import (
 // D_j = G_j. If d_j is the coefficient of s^k in D_j, then b(n) = x(n) + sum of d_j c_j(n) decides as before, its
 // running sum is the next x, and D_j - d_j (1/z - 1)^k E the next D_j.
 type null struct {
-	form  *form
-	order int         // the density is O(nu^(2 order))
-	taylr [][]float64 // for several pulses: coefficients of s^n in D_j; nil for one
-	reach float64     // largest |nu| (for one pulse: from the nearest whole number) at which this is meant to be used
+	form   *form
+	order  int         // the density is O(nu^(2 order))
+	taylor [][]float64 // for several pulses: coefficients of s^n in D_j; nil for one
+	reach  float64     // largest |nu| (for one pulse: from the nearest whole number) at which this is meant to be used
 }
 
 const (
@@ -53,7 +53,7 @@ func (p *process) densities(ctx context.Context, basis []pulse.Shape, scale floa
 		if near.form, err = q.spectral(ctx, lags+near.order); err != nil {
 			return nil, nil, err
 		}
-		if near.taylr == nil {
+		if near.taylor == nil {
 			// Unless the sums are much larger than the levels, their form has all the digits everywhere.
 			top := max(near.form.power(0), near.form.at(newAngle(0), []complex128{1}))
 			if math.Pow(4, float64(near.order))*top < 1e3*p.power {
@@ -95,7 +95,7 @@ func (p *process) null(basis []pulse.Shape, scale float64) (*null, *process) {
 		from, to := s.Support()
 		far = max(far, -from, to)
 	}
-	return &null{order: order, taylr: d, reach: 0.5 / (2 * math.Pi * far)}, p.join(x)
+	return &null{order: order, taylor: d, reach: 0.5 / (2 * math.Pi * far)}, p.join(x)
 }
 
 // sums returns the running sums of a scalar that the edges emit, before each position, if they are bounded: then the sum
@@ -232,18 +232,18 @@ func (p *process) join(x *process) *process {
 
 // at is the form at the angle t; energy is |G|^2 at the full frequency, which only one pulse needs.
 func (n *null) at(t angle, energy float64) float64 {
-	if n.taylr == nil {
+	if n.taylor == nil {
 		lift := 4 * t.half * t.half
 		return math.Pow(lift, float64(n.order)) * n.form.at(t, []complex128{1}) * energy
 	}
 	s := complex(0, 2*math.Pi*t.nu)
-	h := make([]complex128, len(n.taylr)+1)
+	h := make([]complex128, len(n.taylor)+1)
 	h[0] = pulse.Rect(1).Transform(t.nu)
 	lift := complex(-2*t.half*t.half, t.sin) // exp(s) - 1
 	for range n.order {
 		h[0] *= lift
 	}
-	for j, d := range n.taylr {
+	for j, d := range n.taylor {
 		var sum complex128
 		for i := len(d) - 1; i >= n.order; i-- {
 			sum = sum*s + complex(d[i], 0)

@@ -37,9 +37,9 @@ const (
 	walkWork   = 1e8
 )
 
-// quadrature makes the plan. It is the inside check of the engine at the same time: the integral of the matrix over a
-// period must give the mean products of the time domain. A peak so narrow that no panel saw it fails the check, and the
-// panels start out finer.
+// quadrature makes the plan. It is the inside check of the engine at the same time: the tones and the integral of the
+// matrix over a period must give the mean squares of the time domain. A peak so narrow that no panel saw it fails the
+// check, and the panels start out finer.
 func (p *PSD) quadrature() *plan {
 	p.planned.Lock()
 	defer p.planned.Unlock()
@@ -47,22 +47,25 @@ func (p *PSD) quadrature() *plan {
 		return p.plan
 	}
 	far := 1.0
-	want := 0.0
+	var want, power, tones float64 // mean squares of all, of what has a density, and of the tones as they stand
 	for _, s := range p.basis {
 		from, to := s.Support()
 		far = max(far, to-from)
 	}
 	for _, c := range p.parts {
-		if c.form != nil {
-			for i := range p.basis {
-				want += c.prob * c.form.power(i)
+		for i := range p.basis {
+			want += c.prob * c.tones.square(i)
+			tones += c.prob * c.tones.sum(i)
+			if c.form != nil {
+				power += c.prob * c.form.power(i)
 			}
 		}
 	}
+	want += power
 	const finest = 1 << 16
 	for start := int(4 * far); ; start *= 4 {
-		q := p.panels(start, want)
-		got := 0.0
+		q := p.panels(start, power)
+		got := tones
 		for i := range p.basis {
 			got += 2 * floats.Dot(q.weight, q.matrix[i*len(p.basis)+i])
 		}
@@ -71,7 +74,7 @@ func (p *PSD) quadrature() *plan {
 			return q
 		}
 		if start > finest {
-			panic(fmt.Errorf("spectrum: the inside check fails for %s: its density integrates to %v where the time domain has %v; its memory is too long for the digits there are", p.name, got, want))
+			panic(fmt.Errorf("spectrum: the inside check fails for %s: its density and tones add up to %v where the time domain has %v; its memory is too long for the digits there are", p.name, got, want))
 		}
 	}
 }

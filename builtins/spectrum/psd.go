@@ -186,7 +186,7 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 	}
 	scale := symbols.power
 	for j := range width {
-		scale += out.tones.power[(j*width+j)*lags]
+		scale += out.tones.square(j)
 	}
 	if !symbols.zero(scale) {
 		if out.form, out.near, err = symbols.densities(ctx, p.basis, scale, lags); err != nil {
@@ -295,19 +295,20 @@ func (p *PSD) Density(dst, f []float64) []float64 {
 // block is the number of frequencies that are evaluated between two looks at the context, unless they are slow.
 const block = 252
 
-// evaluate sets dst to the two-sided density over the squared volts and the symbol period, at nu symbol rates. Slow
-// frequencies are shared out among the processors.
+// evaluate sets dst to the two-sided density over the squared volts and the symbol period, at nu symbol rates. Work
+// that takes longer than starting it is shared out among the processors.
 func (p *PSD) evaluate(ctx context.Context, dst, nu []float64) {
-	size, workers := block, 1
+	cost := 50.0 // nanoseconds a frequency
 	for _, c := range p.parts {
-		if c.form == nil {
-			continue
-		}
-		if cost := c.form.cost(); cost > 1e4 {
-			size, workers = min(size, 1+int(1e7/cost)), runtime.NumCPU()
+		if c.form != nil {
+			cost += c.form.cost()
 		}
 	}
-	workers = min(workers, (len(dst)+size-1)/size)
+	size := min(block, 1+int(1e7/cost))
+	workers := 1
+	if cost*float64(len(dst)) > 3e4 {
+		workers = min(runtime.NumCPU(), (len(dst)+size-1)/size)
+	}
 	var next atomic.Int64
 	work := func() {
 		w := newWorkspace(min(size, len(dst)))

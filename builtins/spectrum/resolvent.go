@@ -86,7 +86,7 @@ func (a *autocorr) arnoldi(ctx context.Context, functions [][]float64, rank int)
 			return nil, nil, context.Cause(ctx)
 		}
 		v := make([]float64, len(a.next))
-		a.step1.apply(v, basis[n], true)
+		a.matrix.apply(v, basis[n], true)
 		columns = append(columns, orthogonalise(v))
 	}
 	h = vectors(len(basis), len(basis))

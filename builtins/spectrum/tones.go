@@ -71,6 +71,23 @@ func (p *process) means(ctx context.Context, lags int) (*comb, error) {
 	return newComb(ctx, sequences, lags)
 }
 
+// square is the mean square of component j, sum what its tones over one period of k add up to: the same, if all is well.
+func (c *comb) square(j int) float64 {
+	return c.power[(j*len(c.coef)+j)*c.lags]
+}
+
+func (c *comb) sum(j int) float64 {
+	sum := 0.0
+	for k := range c.coef[j] {
+		power := square(c.coef[j][k])
+		if k > 0 && 2*k != c.period {
+			power *= 2
+		}
+		sum += power
+	}
+	return sum
+}
+
 // at is the coefficient of component j for any k >= 0: the sequence is real and its series repeats.
 func (c *comb) at(j, k int) complex128 {
 	k %= c.period
