@@ -241,27 +241,6 @@ func peak(p *spectrum.PSD, lo, hi float64) float64 {
 	return lo
 }
 
-// Peaks with full-width pulses: place and density (two-sided, over A^2 T), from the independent computation whose
-// definitions stand in testdata/reference.json.
-func TestPeaks(t *testing.T) {
-	tests := []struct {
-		code     *linecode.Code
-		lo, hi   float64
-		nu, peak float64
-	}{
-		{linecode.HDB3(), 0.3, 0.5, 0.385165, 0.6331052},
-		{linecode.Code8b10b(), 0.2, 0.3, 0.242554, 0.9844106},
-		{linecode.DelayModulation(), 0.15, 0.22, 0.187477, 4.9986971},
-	}
-	for _, test := range tests {
-		p := must(spectrum.Exact(test.code, pulse.Train{}))
-		nu := peak(p, test.lo, test.hi)
-		if got := p.At(nu) / 2; math.Abs(nu-test.nu) > 1e-5 || math.Abs(got-test.peak) > 1e-6 {
-			t.Errorf("%s peaks at %v with %v, want %v with %v", test.code.Name(), nu, got, test.nu, test.peak)
-		}
-	}
-}
-
 // Maximum-entropy runs of 2 to 8 symbols, alternating in sign (A. Gallopoulos, C. Heegard and P. H. Siegel 1989, from
 // memory): with lambda the growth rate 2^capacity and g the sum of lambda^-l exp(-j w l) over the runs.
 func TestMaximumEntropyRuns(t *testing.T) {

@@ -189,16 +189,20 @@ func closure(t interface {
 }
 
 func TestParseval(t *testing.T) {
+	codes := []*linecode.Code{linecode.UnipolarRZ(0.5), linecode.PolarRZ(1. / 3), linecode.BitStuffing(3)}
 	for _, name := range linecode.Names() {
 		code, err := linecode.ByName(name)
 		if err != nil {
 			t.Fatal(err)
 		}
+		codes = append(codes, code)
+	}
+	for _, code := range codes {
 		for _, data := range []source.Model{source.Random(), source.Biased(0.7), source.Markov(0.1, 0.4)} {
 			for _, train := range []pulse.Train{{SymbolRate: 2e6, Level: 3}, {Shape: pulse.Rect(0.5)}} {
 				p, err := spectrum.Exact(code.Fed(data), train)
 				if err != nil {
-					t.Errorf("%s: %v", name, err)
+					t.Errorf("%s: %v", code.Name(), err)
 					continue
 				}
 				closure(t, p)

@@ -207,6 +207,7 @@ func TestExactFractions(t *testing.T) {
 		code                 string
 		quarter, half, slope float64 // slope NaN: the digital sum is not bounded
 	}{
+		{"rll17", 16789. / 16575, 41. / 225, math.NaN()},
 		{"ami_p50", 1. / 2, 1, 1. / 4},
 		{"hdb3_p50", 8976. / 16895, 32. / 31, 17960. / 2883},
 		{"b3zs_p50", 128. / 225, 1376. / 875, 456. / 175},
@@ -237,6 +238,40 @@ func TestExactFractions(t *testing.T) {
 			if got := symbol(nu) / math.Pow(2*math.Sin(math.Pi*nu), 2); math.Abs(got/test.slope-1) > 1e-9 {
 				t.Errorf("%s: slope %v, want %v", test.code, got, test.slope)
 			}
+		}
+	}
+}
+
+// The symbol spectrum at 0 Hz of codes whose digital sum is not bounded, from the same table.
+func TestExactFractionsAtZero(t *testing.T) {
+	want := map[string]float64{"miller_p50": 1. / 5, "rll17": 47. / 75, "4b5b_nrzi": 1. / 5}
+	for _, r := range references(t) {
+		if w, ok := want[r.ID]; ok {
+			if got := r.exact(t).At(0) / 2; math.Abs(got-w) > 1e-13 {
+				t.Errorf("%s at 0: %v, want %v", r.ID, got, w)
+			}
+		}
+	}
+}
+
+// Peaks with full-width pulses: place and two-sided density over A^2 T, from the same computation.
+func TestPeaks(t *testing.T) {
+	want := map[string]struct{ lo, hi, nu, peak float64 }{
+		"hdb3_p50":   {0.3, 0.5, 0.385165, 0.6331052},
+		"b3zs_p50":   {0.4, 0.5, 0.469914, 0.6748640},
+		"mms43_p50":  {0.2, 0.3, 0.255410, 0.5836874},
+		"8b10b_p50":  {0.2, 0.3, 0.242554, 0.9844106},
+		"miller_p50": {0.15, 0.22, 0.187477, 4.9986971},
+	}
+	for _, r := range references(t) {
+		w, ok := want[r.ID]
+		if !ok {
+			continue
+		}
+		p := r.exact(t)
+		nu := peak(p, w.lo, w.hi)
+		if got := p.At(nu) / 2; math.Abs(nu-w.nu) > 1e-5 || math.Abs(got-w.peak) > 1e-6 {
+			t.Errorf("%s peaks at %v with %v, want %v with %v", r.ID, nu, got, w.nu, w.peak)
 		}
 	}
 }
