@@ -74,7 +74,7 @@ func (l *lowering) typeSwitch(s *ast.TypeSwitchStmt) ast.Stmt {
 			add(&ast.IfStmt{If: pos, Cond: l.is(pos, value, l.u.info.TypeOf(x.X), t), Body: set})
 			if len(clause.List) == 1 {
 				bound = &ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}
-				if to := l.u.info.TypeOf(t); to != nil && types.IsInterface(to) {
+				if to := l.u.info.TypeOf(t); to != nil && (types.IsInterface(to) || l.confusable(to)) {
 					bound = &ast.CallExpr{Fun: l.assertion(pos, t, l.u.info.TypeOf(x.X), to, false), Lparen: pos, Args: []ast.Expr{id(value)}, Rparen: pos}
 				}
 			}
@@ -101,7 +101,7 @@ func (l *lowering) is(pos token.Pos, value string, from types.Type, t ast.Expr) 
 	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
 	ok := l.temp(pos).Name
 	var test ast.Expr = &ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}
-	if to := l.u.info.TypeOf(t); to != nil && types.IsInterface(to) {
+	if to := l.u.info.TypeOf(t); to != nil && (types.IsInterface(to) || l.confusable(to)) {
 		test = &ast.CallExpr{Fun: l.assertion(pos, t, from, to, true), Lparen: pos, Args: []ast.Expr{id(value)}, Rparen: pos}
 	}
 	lit := &ast.FuncLit{
@@ -132,7 +132,7 @@ func uses(list []ast.Stmt, name string) bool {
 	return false
 }
 
-// assert turns an assertion to an interface type into a call of a function literal: with two results if it is the right
+// assert turns an assertion to an interface type, or to a paired one, into a call of a function literal: with two results if it is the right
 // side of v, ok := x.(I), and else with one, which panics. The interpreter panics when nil is asserted to be an interface,
 // and cannot find the methods of a cell's value in an any, so the literal asks for each type of the cells that has them:
 //
@@ -147,7 +147,7 @@ func (l *lowering) assert(c *astutil.Cursor, x *ast.TypeAssertExpr) {
 		return // the head of a type switch
 	}
 	to := l.u.info.TypeOf(x.Type)
-	if to == nil || !types.IsInterface(to) {
+	if to == nil || !types.IsInterface(to) && !l.confusable(to) {
 		return
 	}
 	two := false
@@ -182,9 +182,17 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 	}
 	inside := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
 	if i, empty := from.Underlying().(*types.Interface); empty && i.Empty() {
-		for _, t := range l.implementers(to) {
+		candidates := l.implementers(to)
+		if !types.IsInterface(to) {
+			candidates = []types.Type{to}
+		}
+		for _, t := range candidates {
 			if x := l.typeExpr(t, pos); x != nil {
-				inside.List = append(inside.List, try(x))
+				number := &ast.BasicLit{Kind: token.INT, ValuePos: pos, Value: strconv.Itoa(l.in.typeID(t))}
+				inside.List = append(inside.List, &ast.IfStmt{
+					If: pos, Cond: l.hook("Holds", pos, number, id(e)),
+					Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{try(x)}, Rbrace: pos},
+				})
 			}
 		}
 		if !l.ofCompiled(to) {
@@ -200,12 +208,12 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 	results := []*ast.Field{{Type: typ}}
 	if two {
 		results = append(results, &ast.Field{Type: id("bool")})
-		body.List = append(body.List, &ast.ReturnStmt{Return: pos, Results: []ast.Expr{id("nil"), id("false")}})
+		body.List = append(body.List, &ast.ReturnStmt{Return: pos, Results: []ast.Expr{l.zero(to, pos), id("false")}})
 	} else {
 		text := &ast.BasicLit{Kind: token.STRING, ValuePos: pos, Value: strconv.Quote(types.TypeString(to, brief))}
 		body.List = append(body.List,
 			&ast.ExprStmt{X: l.hook("NotA", pos, text, id(e))},
-			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{id("nil")}})
+			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{l.zero(to, pos)}})
 	}
 	var param ast.Expr = id("any")
 	if from != nil {
@@ -220,6 +228,29 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 		},
 		Body: body,
 	}
+}
+
+// confusable reports whether an assertion to a type must look at the pair: to a paired one, and to a type that has the same
+// underlying type as one.
+func (l *lowering) confusable(t types.Type) bool {
+	if paired(t) {
+		return true
+	}
+	same := func(o types.Object) bool {
+		n, ok := o.(*types.TypeName)
+		return ok && paired(n.Type()) && types.Identical(n.Type().Underlying(), t.Underlying())
+	}
+	for _, e := range l.in.names {
+		if same(e.obj) {
+			return true
+		}
+	}
+	for _, o := range l.u.objects {
+		if same(o) {
+			return true
+		}
+	}
+	return false
 }
 
 // ofCompiled reports whether an interface is one of a compiled package, which compiled values in an any can have.

@@ -292,7 +292,7 @@ func (l *lowering) receive(c *astutil.Cursor, n *ast.UnaryExpr) {
 	case *ast.ExprStmt, *ast.CommClause:
 		return
 	case *ast.AssignStmt:
-		if _, ok := p.Lhs[0].(*ast.Ident); len(p.Lhs) == 2 || len(p.Rhs) == 1 && ok {
+		if _, ok := p.Lhs[0].(*ast.Ident); l.comms[p] || len(p.Lhs) == 2 || len(p.Rhs) == 1 && ok {
 			return
 		}
 	case *ast.ParenExpr:

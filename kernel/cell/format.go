@@ -55,6 +55,35 @@ func (in *Interpreter) typeName(id int, v any) string {
 	return s.typeName()
 }
 
+// holds reports whether an any may hold a value of that very type. Of paired types the interpreter keeps the type with the
+// value, so that T(5) is no plain int; of others only the shape is known.
+func (in *Interpreter) holds(id int, v any) bool {
+	in.types.Lock()
+	want := in.typeTable[id]
+	in.types.Unlock()
+	s := &shown{in: in, v: reflect.ValueOf(v)}
+	pair := s.v.IsValid() && s.v.Type() == in.vm.pair
+	s.resolve()
+	if !pair {
+		return !paired(want)
+	}
+	return s.t == nil || types.Identical(s.t, want)
+}
+
+// paired reports whether the interpreter puts a pair of type and value into an any: for a cell's types with methods other
+// than structs.
+func paired(t types.Type) bool {
+	n, ok := types.Unalias(t).(*types.Named)
+	if !ok || n.Obj().Pkg() == nil || n.Obj().Pkg().Path() != "main" || n.NumMethods() == 0 {
+		return false
+	}
+	switch n.Underlying().(type) {
+	case *types.Struct, *types.Interface:
+		return false
+	}
+	return true
+}
+
 // shown returns what prints like v in Go, or nil if v does so by itself.
 func (in *Interpreter) shown(v any, t types.Type) *shown {
 	s := &shown{in: in, v: reflect.ValueOf(v), t: t}

@@ -122,7 +122,7 @@ func New(opt Options) (*Interpreter, error) {
 	if _, err := in.vm.yaegi.Eval(`import ` + kernel + ` "linewright/cell"`); err != nil {
 		return nil, err
 	}
-	if _, err := in.vm.yaegi.Eval("var " + kernel + "run int; func " + asError + "(err error) error { return err }"); err != nil {
+	if _, err := in.vm.yaegi.Eval("var " + kernel + "run int; func " + asError + "(err error) error { return err }; func " + asAny + "(v any) any { return v }"); err != nil {
 		return nil, err
 	}
 	v, err := in.vm.yaegi.Eval("&" + kernel + "run")
@@ -146,6 +146,7 @@ func (in *Interpreter) hooks() interp.Exports {
 			"Typed":    reflect.ValueOf(in.typed),
 			"TypeName": reflect.ValueOf(in.typeName),
 
+			"Holds":     reflect.ValueOf(in.holds),
 			"NotA":      reflect.ValueOf(notA),
 			"Equal":     reflect.ValueOf(in.equal),
 			"Complex":   reflect.ValueOf(func(re, im float64) complex128 { return complex(re, im) }),

@@ -161,6 +161,49 @@ func (l *lowering) methodExpr(c *astutil.Cursor, s *ast.SelectorExpr) {
 	l.replace(c, &ast.FuncLit{Type: t, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{body}, Rbrace: pos}})
 }
 
+// methodValue turns x.M, not called, into func(r T) func(...) { return func(...) { return M(r, ...) } }(x): the receiver is
+// that of now, which the interpreter forgets.
+func (l *lowering) methodValue(c *astutil.Cursor, s *ast.SelectorExpr) {
+	sel := l.u.info.Selections[s]
+	if sel == nil || sel.Kind() != types.MethodVal || l.called[s] {
+		return
+	}
+	fn, ok := sel.Obj().(*types.Func)
+	if !ok || types.IsInterface(fn.Signature().Recv().Type()) || l.methodSlot(fn) == "" {
+		return
+	}
+	pos := s.Pos()
+	t, ok := l.typeExpr(sel.Type(), pos).(*ast.FuncType)
+	recv := l.typeExpr(fn.Signature().Recv().Type(), pos)
+	if !ok || recv == nil {
+		return
+	}
+	id := func(i int) *ast.Ident { return &ast.Ident{Name: fmt.Sprintf("%sa%d", kernel, i), NamePos: pos} }
+	call := &ast.CallExpr{Fun: &ast.Ident{Name: l.methodSlot(fn), NamePos: pos}, Lparen: pos, Args: []ast.Expr{id(0)}, Rparen: pos}
+	for i, f := range t.Params.List {
+		f.Names = []*ast.Ident{id(i + 1)}
+		call.Args = append(call.Args, id(i+1))
+	}
+	if fn.Signature().Variadic() {
+		call.Ellipsis = pos
+	}
+	var body ast.Stmt = &ast.ExprStmt{X: call}
+	if t.Results != nil {
+		body = &ast.ReturnStmt{Return: pos, Results: []ast.Expr{call}}
+	}
+	inner := &ast.FuncLit{Type: t, Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{body}, Rbrace: pos}}
+	outer := &ast.FuncLit{
+		Type: &ast.FuncType{
+			Func: pos, Params: &ast.FieldList{Opening: pos, List: []*ast.Field{{Names: []*ast.Ident{id(0)}, Type: recv}}, Closing: pos},
+			Results: &ast.FieldList{Opening: pos, List: []*ast.Field{{Type: l.typeExpr(sel.Type(), pos)}}, Closing: pos},
+		},
+		Body: &ast.BlockStmt{Lbrace: pos, List: []ast.Stmt{&ast.ReturnStmt{Return: pos, Results: []ast.Expr{inner}}}, Rbrace: pos},
+	}
+	made := &ast.CallExpr{Fun: outer, Lparen: pos, Args: []ast.Expr{l.receiver(s.X, sel, fn)}, Rparen: pos}
+	l.synthetic[made] = true
+	l.replace(c, made)
+}
+
 // receiver is the receiver that a method's function takes, from the operand of a selector.
 func (l *lowering) receiver(x ast.Expr, sel *types.Selection, fn *types.Func) ast.Expr {
 	pos := x.Pos()

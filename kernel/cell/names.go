@@ -15,6 +15,7 @@ const (
 	valuesName = kernel + "values" // the function of source.list, which only the checker sees
 
 	asError = kernel + "error" // a function of the interpreter that makes an error of its argument
+	asAny   = kernel + "any"   // the same for any
 )
 
 var (
