@@ -282,8 +282,8 @@ func (l *lowering) keepReceiver(list *[]ast.Stmt, call *ast.CallExpr, f *ast.Sel
 	f.X = l.keep(list, f.X)
 }
 
-// receive makes a function literal's call of a receive that is part of an expression or of a return: the interpreter can
-// only receive in a statement of its own.
+// receive makes a function literal's call of a receive whose value is used: the interpreter loses it inside an expression,
+// and a variable that has received can never be assigned again.
 func (l *lowering) receive(c *astutil.Cursor, n *ast.UnaryExpr) {
 	if n.Op != token.ARROW {
 		return
@@ -292,7 +292,7 @@ func (l *lowering) receive(c *astutil.Cursor, n *ast.UnaryExpr) {
 	case *ast.ExprStmt, *ast.CommClause:
 		return
 	case *ast.AssignStmt:
-		if _, ok := p.Lhs[0].(*ast.Ident); l.comms[p] || len(p.Lhs) == 2 || len(p.Rhs) == 1 && ok {
+		if l.comms[p] || len(p.Lhs) == 2 && len(p.Rhs) == 1 {
 			return
 		}
 	case *ast.ParenExpr:

@@ -25,7 +25,10 @@ func TestLowering(t *testing.T) {
 			"for i, j := 0, 4; i < j; i, j = i+1, j-1 { fmt.Print(i, j, \" \") }", "0 4 1 3 ",
 			"func two() (int, int) { return 1, 8 }\ni, a[i] = two()\nfmt.Println(i, a)", "1 [8 3 1]\n",
 		}},
-		{"receive inside an expression", []string{
+		{"receive", []string{
+			"q := make(chan int, 2)\nq <- 1; q <- 2\nv := <-q\nv = 5\nv += <-q\nv", "7",
+			"func f(q chan int) int { q <- 3; v := <-q; v++; return v }\nf(q)", "4",
+
 			"c := make(chan int, 9)\nfor k := range 9 { c <- k }\ns := make([]int, 2)\ns[1] = <-c + 10\ns[0] = <-c\nfmt.Println(s, 2*<-c, -<-c)", "[1 10] 4 -3\n",
 			"type named chan int\nfunc (n named) next() int { return <-n }\nnamed(c).next()", "4",
 			"ok := false\ns[1], ok = <-c\nfmt.Println(s, ok)", "[1 5] true\n", "select {\ncase s[0] = <-c:\n}\ns[0]", "6",
