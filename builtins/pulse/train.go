@@ -132,6 +132,11 @@ func unknownLevel(shapes map[float64]Shape, levels []float64) float64 {
 // Transitional tells whether a symbol's waveform depends on the level before it.
 func (d *Drive) Transitional() bool { return d.transition != nil }
 
+// Single returns the pulse that every level scales, if there is one pulse for all: no Shapes and no Transition.
+func (d *Drive) Single() (s Shape, ok bool) {
+	return d.shape, d.transition == nil && len(d.shapes) == 0
+}
+
 // Symbol returns the waveform of one symbol of level next after one of level prev, in units of Volts and with the
 // factor of the level included. It is an error if the train's Transition panics or gives a shape that leaves its own
 // symbol.

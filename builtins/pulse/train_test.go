@@ -149,6 +149,14 @@ func TestSymbol(t *testing.T) {
 	if err != nil || s.At(0.25) != -3 || s.At(0.75) != 0 {
 		t.Errorf("symbol of level -3 is %v and %v, error %v; want -3, 0", s.At(0.25), s.At(0.75), err)
 	}
+	if _, ok := d.Single(); ok {
+		t.Error("a train with a shape of its own for one level says that it has a single pulse")
+	}
+	if single, err := (Train{Shape: Rect(0.5)}).Drive(quarter); err != nil {
+		t.Error(err)
+	} else if s, ok := single.Single(); !ok || s.At(0.75) != 0 {
+		t.Error("a train with one pulse does not give it")
+	}
 	if d.Transitional() {
 		t.Error("a train without Transition says that it looks at the level before")
 	}

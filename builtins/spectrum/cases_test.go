@@ -448,3 +448,25 @@ func recovered(err *error) {
 		*err = e
 	}
 }
+
+// What is kept with a code serves other trains: other pulses, also longer ones, other rates, another level.
+func TestFurtherTrains(t *testing.T) {
+	code := linecode.HDB3().Fed(source.Biased(0.4))
+	trains := []pulse.Train{
+		{}, {Shape: pulse.Rect(0.5), Level: 2}, {SymbolRate: 1e6}, {Shape: pulse.Exponential(1, 0.2, 1.5)}, {Shape: pulse.HalfSine(2)}, {},
+	}
+	for i, train := range trains {
+		got := must(spectrum.Exact(code, train))
+		want := must(spectrum.OfChain(code.Chain(), train)) // nothing kept
+		rate := want.SymbolRate()
+		for _, nu := range frequencies {
+			if g, w := got.At(nu*rate), want.At(nu*rate); math.Abs(g-w) > 1e-12*w {
+				t.Errorf("train %d at %v: %v, want %v", i, nu, g, w)
+			}
+		}
+		if g, w := got.Total(), want.Total(); math.Abs(g/w-1) > 1e-13 {
+			t.Errorf("train %d: mean square %v, want %v", i, g, w)
+		}
+		closure(t, got)
+	}
+}

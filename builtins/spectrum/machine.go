@@ -106,12 +106,13 @@ func (x *lexicon) wave(prev, next int32) (int32, error) {
 	return n, nil
 }
 
-// read translates a chain's levels to waveforms and sorts its edges by the state that they leave. It returns the waveforms' shapes beside the machine.
-func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []pulse.Shape, error) {
+// read translates a chain's levels to waveforms and sorts its edges by the state that they leave. It returns the lexicon
+// beside the machine; unless the driver looks at the level before, waveforms have the numbers of their levels.
+func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, *lexicon, error) {
 	x := &lexicon{drive: d, waves: map[[2]int32]int32{}}
 	if d.Transitional() {
 		m, err := x.remember(ctx, ch)
-		return m, x.shapes, err
+		return m, x, err
 	}
 	symbols := 0
 	for i := range ch.Edges {
@@ -143,7 +144,7 @@ func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, []
 			return nil, nil, err
 		}
 	}
-	return m, x.shapes, nil
+	return m, x, nil
 }
 
 // remember is read for a driver that looks at the level before: the level joins the state. Before the first symbol it

@@ -48,7 +48,7 @@ func (m *machine) cycle(s int32) []int32 {
 
 // periodic computes the spectrum of a machine with single edges that starts in state s: what it comes to repeats after
 // D symbols, and its Fourier series are the tones. There is no continuous part.
-func (p *PSD) periodic(ctx context.Context, m *machine, s int32, coef [][]float64, lags int) (*part, error) {
+func periodic(ctx context.Context, m *machine, s int32, coef [][]float64, width, lags int) (*part, error) {
 	cycle := m.cycle(s)
 	symbols := 0
 	for _, t := range cycle {
@@ -60,7 +60,7 @@ func (p *PSD) periodic(ctx context.Context, m *machine, s int32, coef [][]float6
 	if symbols > mostPeriod {
 		return nil, fmt.Errorf("spectrum: the symbols repeat after %d only; the limit is %d", symbols, mostPeriod)
 	}
-	sequences := make([][]float64, len(p.basis))
+	sequences := make([][]float64, width)
 	for j := range sequences {
 		sequences[j] = make([]float64, 0, symbols)
 	}
@@ -78,7 +78,5 @@ func (p *PSD) periodic(ctx context.Context, m *machine, s int32, coef [][]float6
 	if err != nil {
 		return nil, err
 	}
-	out := &part{tones: tones}
-	out.square = p.square(out, lags)
-	return out, nil
+	return &part{tones: tones}, nil
 }

@@ -20,6 +20,7 @@ type PSD struct {
 	name  string
 	drive *pulse.Drive
 	basis []pulse.Shape // what all waveforms are sums of
+	flat  bool          // the one basis shape is a full-width rectangle
 	parts []part        // one for each closed class
 	total float64       // V^2
 
@@ -29,11 +30,10 @@ type PSD struct {
 
 // A part is the spectrum of one closed class, in units of the drive's volts, squared, and of the symbol period.
 type part struct {
-	prob   float64 // of ending there
-	tones  *comb
-	form   *form // of the basis coefficients; nil if they have no continuous part
-	near   *null // nil if the density does not vanish at 0 Hz
-	square float64
+	prob  float64 // of ending there
+	tones *comb
+	form  *form // of the basis coefficients; nil if they have no continuous part
+	near  *null // nil if the density does not vanish at 0 Hz
 }
 
 // A Class is one of several closed classes that the data can end in.
@@ -47,6 +47,8 @@ type Class struct {
 //
 // Where the data can end in one of several closed classes, density and tones are averaged with the probabilities of
 // ending there, and [PSD.Classes] gives each.
+//
+// What does not depend on the train is kept with the code: the next train of the same code is quick.
 func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
 	d, err := t.Drive(c)
 	if err != nil {
@@ -56,7 +58,7 @@ func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
 	if err != nil {
 		return nil, err
 	}
-	return exact(page.Context(), ch, d)
+	return exact(page.Context(), ch, d, true)
 }
 
 // chainOf returns the code's chain. One that is too large, or an interrupt, panics there and is an error here.
@@ -82,57 +84,93 @@ func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
 	if err != nil {
 		return nil, err
 	}
-	return exact(page.Context(), ch, d)
+	return exact(page.Context(), ch, d, false)
 }
 
-// exact is for a chain that was checked.
-func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
-	p, err := analyse(ctx, ch, d)
-	if err != nil && ctx.Err() != nil {
-		return nil, interrupted(ctx)
-	}
-	return p, err
-}
-
-func analyse(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*PSD, error) {
-	m, shapes, err := read(ctx, ch, d)
-	if err != nil {
-		return nil, err
-	}
+// exact is for a chain that was checked. keep tells that nobody changes it, so that what is known of it may be kept.
+func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive, keep bool) (*PSD, error) {
 	p := &PSD{name: ch.Name, drive: d}
-	var coef [][]float64
-	if p.basis, coef, err = waveforms(shapes); err != nil {
+	shape, single := d.Single()
+	var err error
+	if single {
+		p.basis = []pulse.Shape{shape}
+	}
+	if single && keep {
+		err = p.recall(ctx, ch)
+	} else {
+		err = p.analyse(ctx, ch)
+	}
+	switch {
+	case err != nil && ctx.Err() != nil:
+		return nil, interrupted(ctx)
+	case err != nil:
 		return nil, err
+	}
+	// A shape of energy 1 whose overlap with the rectangle of energy 1 is 1 is that rectangle (Schwarz).
+	p.flat = single && shape.Overlap(shape, 0) == 1 && shape.Overlap(pulse.Rect(1), 0) == 1
+	for _, c := range p.parts {
+		p.total += c.prob * p.square(&c) * p.volts2()
+	}
+	return p, nil
+}
+
+// analyse works out the parts, and the basis unless there is one pulse for all levels.
+func (p *PSD) analyse(ctx context.Context, ch *linecode.Chain) error {
+	m, x, err := read(ctx, ch, p.drive)
+	if err != nil {
+		return err
+	}
+	var coef [][]float64
+	if p.basis != nil {
+		for _, a := range x.levels {
+			coef = append(coef, []float64{a})
+		}
+	} else {
+		p.basis, coef = waveforms(x.shapes)
+	}
+	lags, err := p.reach()
+	if err != nil {
+		return err
 	}
 	parts, prob := []*machine{m}, []float64{1}
 	if _, ok := m.begin(); !ok || !m.single() {
 		if parts, prob, err = m.closed(ctx); err != nil {
-			return nil, err
+			return err
 		}
 	}
 	for i, m := range parts {
-		part, err := p.class(ctx, m, coef)
+		part, err := p.class(ctx, m, coef, lags)
 		if err != nil {
-			return nil, err
+			return err
 		}
 		part.prob = prob[i]
 		p.parts = append(p.parts, *part)
-		p.total += part.prob * part.square * p.volts2()
 	}
-	return p, nil
+	return nil
 }
 
 // mostSymbols is the longest support of a waveform, in symbols.
 const mostSymbols = 1 << 16
 
-// waveforms expresses the shapes of symbols through few of them; several are brought to energy 1.
-func waveforms(shapes []pulse.Shape) (basis []pulse.Shape, coef [][]float64, err error) {
-	basis, coef = pulse.Basis(shapes)
-	for _, s := range basis {
-		if from, to := s.Support(); to-from > mostSymbols {
-			return nil, nil, fmt.Errorf("spectrum: a pulse from %v to %v symbols is too long; the limit is %d symbols", from, to, mostSymbols)
+// reach is the number of lags at which two waveforms may overlap.
+func (p *PSD) reach() (int, error) {
+	far := 1.0
+	for _, a := range p.basis {
+		from, to := a.Support()
+		if to-from > mostSymbols {
+			return 0, fmt.Errorf("spectrum: a pulse from %v to %v symbols is too long; the limit is %d symbols", from, to, mostSymbols)
+		}
+		for _, b := range p.basis {
+			_, to := b.Support()
+			far = max(far, to-from)
 		}
 	}
+	return int(math.Ceil(far)), nil
+}
+
+// waveforms expresses the shapes of symbols through few of them; several are brought to energy 1.
+func waveforms(shapes []pulse.Shape) (basis []pulse.Shape, coef [][]float64) {
+	basis, coef = pulse.Basis(shapes)
 	switch len(basis) {
 	case 0: // nothing but zero: any shape will do
 		basis = []pulse.Shape{pulse.Rect(1)}
@@ -149,24 +187,15 @@ func waveforms(shapes []pulse.Shape) (basis []pulse.Shape, coef [][]float64, err
 			}
 		}
 	}
-	return basis, coef, nil
+	return basis, coef
 }
 
-// class computes the spectrum of one closed class.
-func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, error) {
+// class computes the spectrum of one closed class, with so many lags for the time domain.
+func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64, lags int) (*part, error) {
 	width := len(p.basis)
-	far := 1.0 // symbols that a waveform may overlap
-	for _, a := range p.basis {
-		for _, b := range p.basis {
-			from, _ := a.Support()
-			_, to := b.Support()
-			far = max(far, to-from)
-		}
-	}
-	lags := int(math.Ceil(far))
 	if m.single() {
 		s, _ := m.begin()
-		return p.periodic(ctx, m, s, coef, lags)
+		return periodic(ctx, m, s, coef, width, lags)
 	}
 	m, length, err := m.level(ctx)
 	if err != nil {
@@ -193,7 +222,6 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 			return nil, err
 		}
 	}
-	out.square = p.square(out, lags)
 	return out, nil
 }
 
@@ -201,8 +229,8 @@ func (p *PSD) class(ctx context.Context, m *machine, coef [][]float64) (*part, e
 // the overlap of basis shape i with basis shape j that comes l symbols later,
 //
 //	sum over i, j of P_ij(0) O_ij(0) + 2 sum over l > 0 of P_ij(l) O_ij(l).
-func (p *PSD) square(c *part, lags int) float64 {
-	w := len(p.basis)
+func (p *PSD) square(c *part) float64 {
+	w, lags := len(p.basis), c.tones.lags
 	sum := 0.0
 	for i, a := range p.basis {
 		for j, b := range p.basis {
@@ -251,7 +279,7 @@ func (p *PSD) Classes() []Class {
 		c.prob = 1
 		classes[i] = Class{prob, &PSD{
 			name:  fmt.Sprintf("%s, class %d of %d", p.name, i+1, len(p.parts)),
-			drive: p.drive, basis: p.basis, parts: []part{c}, total: c.square * p.volts2(),
+			drive: p.drive, basis: p.basis, flat: p.flat, parts: []part{c}, total: p.square(&c) * p.volts2(),
 		}}
 	}
 	return classes
@@ -354,7 +382,15 @@ func (p *PSD) some(dst, nu []float64, w *workspace) {
 	}
 	if len(p.basis) == 1 {
 		for i, x := range nu {
-			energy[i] = p.basis[0].Energy(x)
+			if !p.flat {
+				energy[i] = p.basis[0].Energy(x)
+				continue
+			}
+			sinc := 1.0 // its sine is at hand
+			if x != 0 {
+				sinc = t[i].half / (math.Pi * x)
+			}
+			energy[i] = sinc * sinc
 		}
 		for _, c := range p.parts {
 			if c.form == nil {
