@@ -1,11 +1,14 @@
 package pulse
 
 import (
+	"context"
 	"math"
 	"strings"
 	"testing"
 
 	"github.com/google/go-cmp/cmp"
+
+	"linewright/builtins/page"
 )
 
 // A fake is a code for these tests.
@@ -161,3 +164,29 @@ func TestSymbol(t *testing.T) {
 		t.Error("a train without Transition says that it looks at the level before")
 	}
 }
+
+// canceled is a host whose cell was interrupted.
+type canceled struct{ page.Host }
+
+func (canceled) Context() context.Context {
+	ctx, cancel := context.WithCancel(context.Background())
+	cancel()
+	return ctx
+}
+
+func TestWaveInterrupted(t *testing.T) {
+	page.Attach(canceled{})
+	defer page.Attach(running{})
+	d, err := Train{}.Drive(ternary)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if got := failure(func() { d.Wave(make([]float64, 10), 1) }); !strings.Contains(got, "interrupted") {
+		t.Errorf("message %q, want that it was interrupted", got)
+	}
+}
+
+// running is a host whose cell was not.
+type running struct{ page.Host }
+
+func (running) Context() context.Context { return context.Background() }
