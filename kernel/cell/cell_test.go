@@ -13,6 +13,9 @@ import (
 	"linewright/plotting"
 )
 
+// raceDetector is true in tests with the race detector.
+var raceDetector bool
+
 // recorder is an Output that keeps everything.
 type recorder struct {
 	mu      sync.Mutex

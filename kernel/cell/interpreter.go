@@ -255,7 +255,11 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 		return nil, err
 	}
 	if p.setup != "" {
-		if err := in.vm.call(p.setup); err != nil {
+		call, err := in.vm.call(p.setup)
+		if err != nil {
+			return nil, err
+		}
+		if err := call(); err != nil {
 			return nil, err
 		}
 	}

@@ -159,10 +159,17 @@ func (m *machine) compile(n ast.Node) (p *interp.Program, err error) {
 	return p, err
 }
 
-// call runs the function of that name, which has no parameters, and returns its panic.
-func (m *machine) call(name string) error {
-	_, err := m.yaegi.Eval(name + "()")
-	return err
+// call returns what runs the function of that name, which has no parameters, and returns its panic. It compiles the call
+// at once, so that only the run itself happens in another goroutine.
+func (m *machine) call(name string) (func() error, error) {
+	p, err := m.yaegi.Compile(name + "()")
+	if err != nil {
+		return nil, err
+	}
+	return func() error {
+		_, err := m.yaegi.Execute(p)
+		return err
+	}, nil
 }
 
 // forget lets go of the trees of what was compiled, as far as no function needs them.

@@ -58,13 +58,17 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 	if p.entry == "" {
 		return nil, nil
 	}
+	call, err := in.vm.call(p.entry)
+	if err != nil {
+		return nil, r.compileError(err)
+	}
 	*in.serial = p.serial
 	done := make(chan error, 1)
 	go func() {
 		var err error
 		defer func() { done <- err }() // also if the cell ends its goroutine
 		defer in.goroutines.enter(r)()
-		err = r.call(p.entry)
+		err = r.call(call)
 	}()
 	in.watch()
 	select {
@@ -87,8 +91,8 @@ func (in *Interpreter) execute(r *run, p *program) (*plotting.Bundle, error) {
 }
 
 // call runs the cell's function in its own goroutine.
-func (r *run) call(entry string) error {
-	err := r.in.vm.call(entry)
+func (r *run) call(call func() error) error {
+	err := call()
 	var p interp.Panic
 	if errors.As(err, &p) {
 		return r.in.panicError(p.Value)

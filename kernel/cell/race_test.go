@@ -1,0 +1,5 @@
+//go:build race
+
+package cell
+
+func init() { raceDetector = true }
