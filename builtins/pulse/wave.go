@@ -11,8 +11,8 @@ import (
 // Wave returns the waveform of a sequence of symbol levels in volts: perSymbol samples a symbol, taken at the middles
 // (k + 1/2)/perSymbol of equal slots, so that none falls on an edge of a slot. Before the first symbol and after the
 // last there are no pulses, and what shapes reach beyond the sequence is cut off; the level before the first symbol is 0
-// for a Transition. It panics if perSymbol is below 1, if a level is not finite, where [Drive.Symbol] fails, and when the running
-// cell is interrupted.
+// for a Transition. It panics if perSymbol is below 1, if a level is not finite, where [Drive.Symbol] fails, and when the
+// running cell is interrupted.
 func (d *Drive) Wave(levels []float64, perSymbol int) []float64 {
 	if perSymbol < 1 {
 		panic(fmt.Errorf("pulse: Wave with %d samples a symbol; give at least 1", perSymbol))

@@ -470,3 +470,39 @@ func TestFurtherTrains(t *testing.T) {
 		closure(t, got)
 	}
 }
+
+// Classes that repeat with periods of 4 and 6 symbols: tones at one frequency, 1/2 and whole numbers, are one line, and
+// their powers are averaged.
+func TestClassesWithTones(t *testing.T) {
+	ch := &linecode.Chain{Name: "two rings", States: 11, Edges: []linecode.Edge{
+		{From: 0, To: 1, P: 0.5, Levels: []float64{0}}, {From: 0, To: 5, P: 0.5, Levels: []float64{0}},
+	}}
+	ring := func(first int, levels ...float64) {
+		for i, a := range levels {
+			ch.Edges = append(ch.Edges, linecode.Edge{From: first + i, To: first + (i+1)%len(levels), P: 1, Levels: []float64{a}})
+		}
+	}
+	ring(1, 1, 0, 0, 0)
+	ring(5, 1, 0, 0, 0, 0, 0)
+	p := must(spectrum.OfChain(ch, pulse.Train{}))
+	want := []spectrum.Line{ // one pulse in n symbols: 1/n^2 for each k/n, twice above 0, times sinc^2
+		{Freq: 0, Power: (1./16 + 1./36) / 2},
+		{Freq: 1. / 6, Power: 1. / 36 * sinc2(1./6)},
+		{Freq: 1. / 4, Power: 1. / 16 * sinc2(1./4)},
+		{Freq: 1. / 3, Power: 1. / 36 * sinc2(1./3)},
+		{Freq: 1. / 2, Power: (1./16 + 1./36) * sinc2(1./2)},
+		{Freq: 2. / 3, Power: 1. / 36 * sinc2(2./3)},
+		{Freq: 3. / 4, Power: 1. / 16 * sinc2(3./4)},
+		{Freq: 5. / 6, Power: 1. / 36 * sinc2(5./6)},
+	}
+	lines := p.Lines(1)
+	if len(lines) != len(want) {
+		t.Fatalf("lines %v, want %v", lines, want)
+	}
+	for i, l := range lines {
+		if l.Freq != want[i].Freq || math.Abs(l.Power/want[i].Power-1) > 1e-12 {
+			t.Errorf("line %v, want %v", l, want[i])
+		}
+	}
+	closure(t, p)
+}

@@ -198,7 +198,7 @@ func TestParseval(t *testing.T) {
 		codes = append(codes, code)
 	}
 	for _, code := range codes {
-		for _, data := range []source.Model{source.Random(), source.Biased(0.7), source.Markov(0.1, 0.4)} {
+		for _, data := range []source.Model{source.Random(), source.Biased(0.7), source.Markov(0.1, 0.4), source.Biased(0), source.Biased(1)} {
 			for _, train := range []pulse.Train{{SymbolRate: 2e6, Level: 3}, {Shape: pulse.Rect(0.5)}} {
 				p, err := spectrum.Exact(code.Fed(data), train)
 				if err != nil {
