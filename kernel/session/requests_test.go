@@ -72,7 +72,7 @@ func TestKernelInfo(t *testing.T) {
 	k, c := serveCells(t)
 	k.version = "1.2.3"
 	reply, _ := c.ask(wire.Shell, "kernel_info_request", nil)
-	equal(t, "protocol", reply["protocol_version"], `"5.3"`)
+	equal(t, "protocol", reply["protocol_version"], `"5.4"`)
 	equal(t, "implementation", reply["implementation"], `"linewright"`)
 	equal(t, "version", reply["implementation_version"], `"1.2.3"`)
 	info := reply["language_info"].(object)

@@ -13,7 +13,7 @@ import (
 )
 
 // Version is the version of the messaging protocol that the kernel speaks.
-const Version = "5.3"
+const Version = "5.4"
 
 var delimiter = []byte("<IDS|MSG>")
 

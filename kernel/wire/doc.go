@@ -10,6 +10,9 @@
 //   - codec.go, sign.go: a Jupyter message as frames, its signature, the memory against replays
 //   - server.go, lobby.go, client.go: the five channels of a kernel, and their other end
 //
+// A new subscription is answered with iopub_welcome (JEP 65 of the Jupyter project), and a client's first request waits
+// for it a little: see lobby.go.
+//
 // # Why a door of its own
 //
 // zmq4 v0.17.0 trusts its peers: it allocates what a frame's header announces, indexes READY metadata without looking,

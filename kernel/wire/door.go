@@ -70,9 +70,9 @@ type door struct {
 	net.Listener
 	kind       zmq4.SocketType
 	limits     limits
-	subscribed func(connection any)           // a peer's first subscription has taken effect
-	left       func(connection any)           // a peer is gone
-	refused    func(peer net.Addr, why error) // a peer was sent away
+	subscribed func(p *peer, topic string, first bool) // a subscription has taken effect
+	left       func(p *peer)                           // a peer is gone
+	refused    func(peer net.Addr, why error)          // a peer was sent away
 
 	ready  chan net.Conn
 	closed chan struct{}

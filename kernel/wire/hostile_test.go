@@ -393,6 +393,7 @@ func TestCommands(t *testing.T) {
 	}
 	p := greeted(t, s, IOPub, zmq4.Sub, "")
 	p.send(wireFrame(0, "no subscription"), wireFrame(0, ""), wireFrame(flagCommand, "\x09SUBSCRIBEkernel."))
+	p.message() // the welcome
 	k := dialServer(t, s)
 	for range 3 {
 		ask(t, k, `{}`)

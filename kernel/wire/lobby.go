@@ -33,7 +33,7 @@ type arrival struct {
 }
 
 type subscription struct {
-	of any // the connection
+	of *peer
 	at time.Time
 }
 
@@ -75,7 +75,7 @@ func (l *lobby) put(to *Queue[*Message], m *Message) {
 }
 
 // subscribed gives the first subscription of a connection to the client that has waited longest.
-func (l *lobby) subscribed(connection any) {
+func (l *lobby) subscribed(p *peer) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
 	if len(l.line) > 0 {
@@ -92,14 +92,14 @@ func (l *lobby) subscribed(connection any) {
 	if len(l.fresh) == maxKnown {
 		l.fresh = l.fresh[1:]
 	}
-	l.fresh = append(l.fresh, subscription{connection, time.Now()})
+	l.fresh = append(l.fresh, subscription{p, time.Now()})
 }
 
-// left forgets the subscription of a connection that is closed.
-func (l *lobby) left(connection any) {
+// left forgets a connection that is closed.
+func (l *lobby) left(p *peer) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	l.fresh = slices.DeleteFunc(l.fresh, func(s subscription) bool { return s.of == connection })
+	l.fresh = slices.DeleteFunc(l.fresh, func(s subscription) bool { return s.of == p })
 }
 
 // release lets a client through, with mu held, and reports whether it was held.

@@ -184,8 +184,8 @@ func TestNewClientHearsItsFirstStatus(t *testing.T) {
 		p.send(signed(t, s, `{}`)) // before the subscriber has so much as greeted
 		sub.send(greeting, ready(zmq4.Sub, ""), wireFrame(0, "\x01"))
 		sub.welcome()
-		for _, want := range []string{"busy", "idle"} {
-			if m := sub.message(); !strings.Contains(string(m[len(m)-1]), want) {
+		for _, want := range []string{"iopub_welcome", "busy", "idle"} {
+			if m := sub.message(); !strings.Contains(string(m[3])+string(m[len(m)-1]), want) {
 				t.Fatalf("client %d heard %q, want %s", i, m, want)
 			}
 		}
@@ -210,18 +210,19 @@ func TestLobby(t *testing.T) {
 	if got := passed(); got != "" {
 		t.Fatalf("let through without a subscription: %s", got)
 	}
-	l.subscribed(1)
+	var peers [6]peer
+	l.subscribed(&peers[1])
 	if got := passed(); got != "aa" {
 		t.Errorf("first subscription lets %q through, want a's two", got)
 	}
 	l.put(out, from("a"))
-	l.subscribed(2)
+	l.subscribed(&peers[2])
 	if got := passed(); got != "ab" {
 		t.Errorf("%q, want a (known) and b (second subscription)", got)
 	}
-	l.subscribed(3)
-	l.subscribed(4)
-	l.left(4)
+	l.subscribed(&peers[3])
+	l.subscribed(&peers[4])
+	l.left(&peers[4])
 	l.put(out, from("c"))
 	l.put(out, from("d"))
 	if got := passed(); got != "c" {
@@ -232,7 +233,7 @@ func TestLobby(t *testing.T) {
 	if m, ok := out.Get(ctx); !ok || m.ID != "d" {
 		t.Error("a client without a subscription is held for ever")
 	}
-	l.subscribed(5) // d's, which came late
+	l.subscribed(&peers[5]) // d's, which came late
 	l.put(out, from("e"))
 	if got := passed(); got != "" {
 		t.Errorf("%q is let through on another's subscription", got)

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"io"
 	"net"
+	"unicode/utf8"
 
 	"github.com/go-zeromq/zmq4"
 )
@@ -17,10 +18,10 @@ type peer struct {
 	out  *outbox
 	raw  *bufio.Reader
 
-	in         []byte // what zmq4 has still to read
-	subscribed bool   // a first subscription is in what zmq4 reads now
-	announced  bool   // the door has been told of one
-	topics     int    // subscriptions taken
+	in         []byte  // what zmq4 has still to read
+	topic      *string // the subscription in what zmq4 reads now, if one is there
+	subscribed bool    // a subscription has taken effect
+	topics     int     // subscriptions taken and given up so far
 
 	opening []byte // greeting and READY of zmq4, which the peer has had already; nil when they are complete
 }
@@ -33,9 +34,9 @@ func newPeer(d *door, c net.Conn, replay []byte) *peer {
 func (p *peer) Read(b []byte) (int, error) {
 	for len(p.in) == 0 {
 		// zmq4 comes back for more only after it has dealt with what it read before.
-		if p.subscribed && !p.announced {
-			p.announced = true
-			p.door.subscribed(p)
+		if p.topic != nil {
+			p.door.subscribed(p, *p.topic, !p.subscribed)
+			p.topic, p.subscribed = nil, true
 		}
 		if err := p.next(); err != nil {
 			if p.out.gaveUp() {
@@ -96,23 +97,28 @@ func (p *peer) next() error {
 	return nil
 }
 
-// maxTopics bounds the set of subscriptions that zmq4 keeps for one connection; a front end has one.
-const maxTopics = 1024
+// maxTopics bounds the set of subscriptions that zmq4 keeps for one connection, and the welcomes that it causes; a front
+// end has one.
+const maxTopics = 64
 
-// subscription passes on a message that subscribes (1, topic) or unsubscribes (0, topic), and nothing else.
+// subscription passes on a message that subscribes (1, topic) or unsubscribes (0, topic), and nothing else. A topic that
+// is no UTF-8 is ignored, as JEP 65 asks; nothing that is broadcast could match it.
 func (p *peer) subscription(message []byte) error {
 	head := 2
 	if message[0]&flagLong != 0 {
 		head = 9
 	}
 	body := message[head:]
-	if len(body) == 0 || body[0] > 1 {
+	if len(body) == 0 || body[0] > 1 || !utf8.Valid(body[1:]) {
 		return nil
 	}
 	if p.topics++; p.topics > maxTopics {
 		return errors.New("too many subscriptions")
 	}
-	p.subscribed = p.subscribed || body[0] == 1
+	if body[0] == 1 {
+		topic := string(body[1:])
+		p.topic = &topic
+	}
 	p.in = message
 	return nil
 }

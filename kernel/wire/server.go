@@ -75,9 +75,15 @@ func (s *Server) open(ch Channel, l *lobby) error {
 	if err != nil {
 		return err
 	}
-	d.subscribed, d.left = func(any) {}, func(any) {}
+	d.left = func(*peer) {}
 	if ch == IOPub {
-		d.subscribed, d.left = l.subscribed, l.left
+		d.left = l.left
+		d.subscribed = func(p *peer, topic string, first bool) {
+			s.welcome(topic)
+			if first {
+				l.subscribed(p) // after the welcome, so that the client hears that before anything of its request
+			}
+		}
 	}
 	d.refused = func(peer net.Addr, why error) {
 		s.log.warn("connection dropped", "channel", ch.String(), "peer", peer.String(), "why", why.Error())
@@ -169,11 +175,24 @@ func (s *Server) Publish(parent *Message, kind string, content any) error {
 	if parent != nil {
 		header = parent.Header
 	}
-	frames, _, err := s.codec.encode(kind, header, nil, content)
+	return s.broadcast("kernel."+s.codec.session+"."+kind, kind, header, content)
+}
+
+// welcome answers a subscription, as JEP 65 of the Jupyter project has it: on the topic subscribed to, so to everybody
+// who has a subscription that matches. Who hears it knows that its own has taken effect.
+func (s *Server) welcome(topic string) {
+	err := s.broadcast(topic, "iopub_welcome", nil, map[string]string{"subscription": topic})
+	if err != nil { // the server is closed
+		s.log.warn("no welcome", "why", err.Error())
+	}
+}
+
+func (s *Server) broadcast(topic, kind string, parent json.RawMessage, content any) error {
+	frames, _, err := s.codec.encode(kind, parent, nil, content)
 	if err != nil {
 		return err
 	}
-	frames = append([][]byte{[]byte("kernel." + s.codec.session + "." + kind)}, frames...)
+	frames = append([][]byte{[]byte(topic)}, frames...)
 	size := 0
 	for _, f := range frames {
 		size += len(f)
