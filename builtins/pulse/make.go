@@ -36,7 +36,7 @@ func Points(t, v []float64) Shape {
 			panic(fmt.Errorf("pulse: Points: time %v stands three times (point %d); a jump is two points at one time", t[i], i))
 		case i > 0 && t[i] > t[i-1] && (v[i-1] != 0 || v[i] != 0):
 			w := t[i] - t[i-1]
-			parts = append(parts, piece{from: t[i-1], width: w, c0: complex(v[i-1], 0), c1: complex((v[i]-v[i-1])/w, 0)})
+			parts = append(parts, piece{from: t[i-1], width: w, c0: complex(v[i-1], 0), c1: complex(v[i]-v[i-1], 0)})
 		}
 	}
 	if t[len(t)-1] == t[0] {
@@ -58,20 +58,20 @@ func Trapezoid(rise, top, fall float64) Shape {
 	}
 	var parts []piece
 	if rise > 0 {
-		parts = append(parts, piece{width: rise, c1: complex(1/rise, 0)})
+		parts = append(parts, piece{width: rise, c1: 1})
 	}
 	if top > 0 {
 		parts = append(parts, piece{from: rise, width: top, c0: 1})
 	}
 	if fall > 0 {
-		parts = append(parts, piece{from: rise + top, width: fall, c0: 1, c1: complex(-1/fall, 0)})
+		parts = append(parts, piece{from: rise + top, width: fall, c0: 1, c1: -1})
 	}
 	return shape(parts...)
 }
 
 func width(name string, w float64) {
-	if !(w > 0) || math.IsInf(w, 0) {
-		panic(fmt.Errorf("pulse: %s(%v): the width is a number of symbols greater than 0", name, w))
+	if !(w > instant) || math.IsInf(w, 0) {
+		panic(fmt.Errorf("pulse: %s(%v): the width is a finite number of symbols greater than 0", name, w))
 	}
 }
 
@@ -88,8 +88,10 @@ func RaisedCosine(w float64) Shape {
 	return shape(piece{width: w, c0: 0.5}, piece{width: w, c0: -0.5, turns: 1 / w})
 }
 
-// tail is the number of time constants after which an exponential is cut off; exp(-40) is below the last digit.
-const tail = 40
+const (
+	tail    = 40    // time constants after which an exponential is cut off: exp(-40) is below the last digit
+	instant = 1e-18 // symbols up to which a time constant is none
+)
 
 // Exponential returns the pulse of a driver with one time constant each way: while it is on, 0 <= x < on, the pulse
 // rises as 1 - exp(-x/rise); then it falls from what it has reached as exp(-(x-on)/fall), on into later symbols. All are
@@ -100,11 +102,11 @@ func Exponential(on, rise, fall float64) Shape {
 	}
 	parts := []piece{{width: on, c0: 1}}
 	top := 1.0
-	if rise > 0 {
+	if rise > instant {
 		parts = append(parts, piece{width: on, c0: -1, rate: -1 / rise})
 		top = -math.Expm1(-on / rise)
 	}
-	if fall > 0 {
+	if fall > instant {
 		parts = append(parts, piece{from: on, width: tail * fall, c0: complex(top, 0), rate: -1 / fall})
 	}
 	return shape(parts...)
@@ -118,7 +120,7 @@ func Settle(from, to, tau float64) Shape {
 		panic(fmt.Errorf("pulse: Settle(%v, %v, %v): from and to are finite, the time constant is at least 0 symbols", from, to, tau))
 	}
 	parts := []piece{{width: 1, c0: complex(to, 0)}}
-	if tau > 0 {
+	if tau > instant {
 		parts = append(parts, piece{width: 1, c0: complex(from-to, 0), rate: -1 / tau})
 	}
 	return shape(parts...)

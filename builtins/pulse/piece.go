@@ -5,7 +5,8 @@ import (
 	"math/cmplx"
 )
 
-// A piece is Re[(c0 + c1 u) exp((rate + 2 pi j turns) u)] with u = x - from, over from <= x < from + width.
+// A piece is Re[(c0 + c1 u/width) exp((rate + 2 pi j turns) u)] with u = x - from, over from <= x < from + width. That c1
+// is what the straight line gains over the width, and no slope, keeps the steepest edges finite.
 type piece struct {
 	from, width float64
 	c0, c1      complex128
@@ -18,14 +19,14 @@ func (p *piece) real() bool { return p.turns == 0 && imag(p.c0) == 0 && imag(p.c
 // at is the piece's function at u = x - from, wherever u lies.
 func (p *piece) at(u float64) float64 {
 	if p.real() {
-		v := real(p.c0) + real(p.c1)*u
+		v := real(p.c0) + real(p.c1)*(u/p.width)
 		if p.rate != 0 {
 			v *= math.Exp(p.rate * u)
 		}
 		return v
 	}
 	cos, sin := cis(p.turns * u)
-	return real((p.c0 + p.c1*complex(u, 0)) * complex(math.Exp(p.rate*u), 0) * complex(cos, sin))
+	return real((p.c0 + p.c1*complex(u/p.width, 0)) * complex(math.Exp(p.rate*u), 0) * complex(cos, sin))
 }
 
 // restrict is the part of p over lo <= x < hi, which must lie within it.
@@ -35,7 +36,7 @@ func (p *piece) restrict(lo, hi float64) piece {
 	grow := complex(math.Exp(p.rate*d), 0) * complex(cos, sin)
 	return piece{
 		from: lo, width: hi - lo,
-		c0: (p.c0 + p.c1*complex(d, 0)) * grow, c1: p.c1 * grow,
+		c0: (p.c0 + p.c1*complex(d/p.width, 0)) * grow, c1: p.c1 * complex((hi-lo)/p.width, 0) * grow,
 		rate: p.rate, turns: p.turns,
 	}
 }
@@ -43,7 +44,7 @@ func (p *piece) restrict(lo, hi float64) piece {
 // transform is the integral of the piece times exp(-2 pi j nu x).
 //
 // A real function is half the sum of (c0, c1, s) and its conjugate, and each half is an integral of
-// (c0 + c1 u) exp(sigma u) over 0 <= u < width with sigma = s - 2 pi j nu or its like.
+// (c0 + c1 u/width) exp(sigma u) over 0 <= u < width with sigma = s - 2 pi j nu or its like.
 func (p *piece) transform(nu float64) complex128 {
 	var sum complex128
 	if p.real() {
@@ -71,20 +72,20 @@ func overlap(p, q *piece) float64 {
 	w := complex(a.width, 0)
 	product := func(q0, q1 complex128, turns float64) complex128 {
 		e0, e1, e2 := powers(rate*a.width, turns*a.width)
-		return w * (a.c0*q0*e0 + w*((a.c0*q1+a.c1*q0)*e1+w*a.c1*q1*e2))
+		return w * (a.c0*q0*e0 + (a.c0*q1+a.c1*q0)*e1 + a.c1*q1*e2)
 	}
 	return real(product(b.c0, b.c1, a.turns+b.turns)+
 		product(cmplx.Conj(b.c0), cmplx.Conj(b.c1), a.turns-b.turns)) / 2
 }
 
-// linear is the integral of (c0 + c1 u) exp((rate + 2 pi j turns) u) over 0 <= u < width.
+// linear is the integral of (c0 + c1 u/width) exp((rate + 2 pi j turns) u) over 0 <= u < width.
 func linear(c0, c1 complex128, rate, turns, width float64) complex128 {
 	w := complex(width, 0)
 	if c1 == 0 {
 		return c0 * w * power0(rate*width, turns*width)
 	}
 	e0, e1, _ := powers(rate*width, turns*width)
-	return w * (c0*e0 + w*c1*e1)
+	return w * (c0*e0 + c1*e1)
 }
 
 // power0 is the integral of exp(z t) over 0 <= t < 1, z = x + 2 pi j turns: (exp(z) - 1)/z. Its numerator is taken
