@@ -311,7 +311,13 @@ func (in *Interpreter) pass(u *unit, p *types.Package, decls []ast.Decl, last as
 		if strings.HasPrefix(e.Msg, "implicit assignment to unexported field") && strings.Contains(e.Msg, "main.") {
 			return
 		}
-		bad = append(bad, problem{e.Pos, e.Msg})
+		msg := e.Msg
+		if name, ok := strings.CutPrefix(msg, "undefined: "); ok {
+			if path := in.lib.named(name); path != "" {
+				msg += fmt.Sprintf("; if the package is meant, import %q", path)
+			}
+		}
+		bad = append(bad, problem{e.Pos, msg})
 	}}
 	// The errors come one by one to the function above.
 	_ = types.NewChecker(&conf, in.fset, p, u.info).Files([]*ast.File{f})

@@ -111,6 +111,12 @@ func TestEdges(t *testing.T) {
 		{"16 generic functions of packages are refused", []string{"import \"slices\"\nslices.Sort([]int{2, 1})", "error: cell[1]:2:1: slices.Sort is not available"}},
 		{"23 unexported fields in JSON are a limit", []string{"import \"encoding/json\"\ntype t struct{ A, b int }\nout, err := json.Marshal(t{1, 2})\nstring(out)", `{"A":1,"Xb":2}`}},
 		{"14 a last line of several values", []string{"1, \"a\"", "1 a", "x := []int{1}\nx, len(x), math.Sqrt(4) // both", "[1] 1 2", "x, y", "error: cell[3]:1:4: undefined: y", "x, 1 = 2", "error: cell[4]:1:"}},
+		{"19 hints", []string{"var mu sync.Mutex", "error: cell[1]:1:8: undefined: sync; if the package is meant, import \"sync\"", "import \"mat\"", "error: it has \"gonum.org/v1/gonum/mat\""}},
+		{"limits are refused", []string{
+			"type V interface{ V() int }\nm := map[V]int{}", "error: cell[1]:2:10: the interpreter cannot look up keys of the interface type V",
+			"import . \"math\"", "error: a cell cannot import into its own names", "func init() {}", "error: func init: a cell is run", "package main", "error: a cell has no package clause",
+			"func f() int", "error: func f has no body", "import \"sync/atomic\"\nvar p atomic.Pointer[int]", "error: cell[6]:2:", "func g() { type T int; return }\nx := func() any { type U int; return U(1) }()\nx != nil", "true",
+		}},
 		{"19 a cell that ends too early", []string{"x := 1\nfor {", "error: cell[1]:2:6: the cell ends too early: expected '}'"}},
 		{"14 several values", []string{"func f() (int, string) { return 1, \"a\" }\nf()", "1 a"}},
 		{"18 a named result and := of it", []string{"func one() (int, error) { return 1, fmt.Errorf(\"bad\") }", "", "func f() (i int, err error) {\n\tr, err := one()\n\ti = r\n\treturn\n}\nv, e := f()\nfmt.Println(v, e)", "1 bad\n"}},

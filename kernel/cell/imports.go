@@ -63,6 +63,17 @@ func (l *library) resolve(path string) string {
 	return path
 }
 
+// named returns the shortest path of a package of that name, or "".
+func (l *library) named(name string) string {
+	best := ""
+	for _, p := range l.paths {
+		if path.Base(p) == name && (best == "" || len(p) < len(best)) {
+			best = p
+		}
+	}
+	return best
+}
+
 // Import implements types.Importer.
 func (l *library) Import(path string) (*types.Package, error) {
 	path = l.resolve(path)

@@ -30,6 +30,12 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		l.findTyped(n)
 	case *ast.CommClause:
 		l.comms[n.Comm] = true
+	case *ast.MapType:
+		if t := l.u.info.TypeOf(n.Key); t != nil {
+			if i, ok := t.Underlying().(*types.Interface); ok && !i.Empty() && !l.ofCompiled(t) {
+				l.fail(n.Key.Pos(), "the interpreter cannot look up keys of the interface type %s; use map[any]", types.TypeString(t, brief))
+			}
+		}
 	}
 	x, ok := c.Node().(ast.Expr)
 	if !ok {

@@ -60,7 +60,9 @@ func TestNoNamesOfTheInterpreter(t *testing.T) {
 	s.is("type T struct{ a int }\nfunc (t T) M(n int) int { return t.a / n }\nfunc f(n int) int { return T{1}.M(n) }", "")
 	for _, code := range []string{"f(0)", "go f(0)", "T{1}.N()", "var x int = T{}", "T.M", "f", "f(1, 2)", "var s []T\ns[3]", "func() { f(0) }()", "interface{ Q() }(T{}).Q()"} {
 		v, err := s.run(code)
+		s.out.mu.Lock() // a goroutine may still report its panic
 		all := v + s.out.stdout.String() + s.out.stderr.String()
+		s.out.mu.Unlock()
 		if err != nil {
 			all += err.Error() + strings.Join(trace(err), "\n")
 		}
