@@ -14,8 +14,10 @@ func (c coder) Name() string { return c.Chain.Name }
 func (c coder) Levels() []float64 {
 	var x lexicon
 	for i := range c.Edges {
-		for _, a := range c.Edges[i].Levels {
-			x.level(a)
+		for k, a := range c.Edges[i].Levels {
+			if k == 0 || a != c.Edges[i].Levels[k-1] {
+				x.level(a)
+			}
 		}
 	}
 	slices.Sort(x.levels)
