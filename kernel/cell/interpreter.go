@@ -8,6 +8,7 @@ import (
 	"go/parser"
 	"go/token"
 	"go/types"
+	"maps"
 	"reflect"
 	"strings"
 	"sync"
@@ -246,10 +247,15 @@ func (in *Interpreter) prepare(r *run, code string) (p *program, err error) {
 	for alias := range p.used {
 		in.imported[alias] = true
 	}
-	for _, group := range [][]ast.Decl{p.types, p.vars, p.funcs} {
+	for _, group := range [][]ast.Decl{p.types, p.vars} {
 		if err := in.vm.declare(group); err != nil {
 			return nil, err
 		}
+	}
+	// From here on the interpreter may have methods that call these variables, also if a function does not compile.
+	maps.Copy(in.methods, p.methods)
+	if err := in.vm.declare(p.funcs); err != nil {
+		return nil, err
 	}
 	if err := in.mark(p); err != nil {
 		return nil, err
@@ -341,13 +347,9 @@ func (in *Interpreter) commit(u *unit, p *program) {
 		}
 		in.names[name] = e
 	}
-	for o, s := range p.slots {
-		in.slots[o] = s
-	}
+	maps.Copy(in.slots, p.slots)
 	for o, list := range p.instances {
 		in.instances[o] = append(in.instances[o], list...)
 	}
-	for slot, t := range p.named {
-		in.named[slot] = t
-	}
+	maps.Copy(in.named, p.named)
 }

@@ -22,6 +22,7 @@ type program struct {
 	slots     map[types.Object]string           // the interpreter's names of the new objects
 	uses      map[*decl]map[string]types.Object // what each declaration mentions
 	used      map[string]bool                   // aliases of packages that the interpreter has not imported before
+	methods   map[types.Object]string           // new variables of methods
 	instances map[types.Object][]*instance      // new instances of generic functions and types
 	named     map[string]types.Type             // instances of generic types, by their names in the interpreter
 	functions []*function                       // where the functions lie; see marks.go
@@ -54,7 +55,7 @@ func (in *Interpreter) lower(u *unit) (*program, error) {
 	l := &lowering{
 		in: in, u: u,
 		p: &program{
-			serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, marks: map[string]bool{},
+			serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, methods: map[types.Object]string{}, marks: map[string]bool{},
 			used: map[string]bool{}, instances: map[types.Object][]*instance{}, named: map[string]types.Type{},
 		},
 		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, synthetic: map[*ast.CallExpr]bool{},

@@ -20,7 +20,7 @@ func (l *lowering) method(d *ast.FuncDecl, fn *types.Func) *ast.FuncDecl {
 	if !ok {
 		if t := l.typeExpr(methodFunc(fn), d.Pos()); t != nil {
 			variable = l.in.gens.fresh(kernel + "m")
-			l.in.methods[fn] = variable
+			l.p.methods[fn] = variable
 			l.p.vars = append(l.p.vars, varDecl(d.Pos(), variable, t))
 			l.p.funcs = append(l.p.funcs, l.trampoline(d, fn, variable))
 		}

@@ -5,6 +5,7 @@ import (
 	"log"
 	"os"
 	"reflect"
+	"runtime"
 	"slices"
 	"strings"
 	"time"
@@ -48,6 +49,7 @@ func (in *Interpreter) exit(code int) {
 	o.Exit(code)
 	// If the end takes a moment, nothing more of the cell runs in it.
 	<-r.ctx.Done()
+	runtime.Goexit()
 }
 
 // sleep is time.Sleep that an interrupt ends.
@@ -57,6 +59,8 @@ func (in *Interpreter) sleep(d time.Duration) {
 	select {
 	case <-t.C:
 	case <-in.here().ctx.Done():
+		// The interrupt stops the interpreter a moment later; the statement after this one must not run before.
+		time.Sleep(10 * time.Millisecond)
 	}
 }
 
