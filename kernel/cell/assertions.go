@@ -7,6 +7,7 @@ import (
 	"go/types"
 	"reflect"
 	"strconv"
+	"strings"
 
 	"golang.org/x/tools/go/ast/astutil"
 )
@@ -99,6 +100,9 @@ func (l *lowering) typeSwitch(s *ast.TypeSwitchStmt) ast.Stmt {
 // is is an expression for whether a variable holds a type.
 func (l *lowering) is(pos token.Pos, value string, from types.Type, t ast.Expr) ast.Expr {
 	id := func(name string) *ast.Ident { return &ast.Ident{Name: name, NamePos: pos} }
+	if l.impossible(from, l.u.info.TypeOf(t)) {
+		return id("false")
+	}
 	ok := l.temp(pos).Name
 	var test ast.Expr = &ast.TypeAssertExpr{X: id(value), Lparen: pos, Type: t, Rparen: pos}
 	if to := l.u.info.TypeOf(t); to != nil && (types.IsInterface(to) || l.confusable(to)) {
@@ -147,16 +151,19 @@ func (l *lowering) assert(c *astutil.Cursor, x *ast.TypeAssertExpr) {
 		return // the head of a type switch
 	}
 	to := l.u.info.TypeOf(x.Type)
-	if to == nil || !types.IsInterface(to) && !l.confusable(to) {
+	from := l.u.info.TypeOf(x.X)
+	if to == nil || !types.IsInterface(to) && !l.confusable(to) && !l.impossible(from, to) {
 		return
 	}
 	two := false
 	if a, ok := c.Parent().(*ast.AssignStmt); ok {
 		two = len(a.Lhs) == 2 && len(a.Rhs) == 1
 	}
-	from := l.u.info.TypeOf(x.X)
 	if from == nil {
 		from = types.NewInterfaceType(nil, nil)
+	}
+	if l.impossible(from, to) {
+		from = nil
 	}
 	call := &ast.CallExpr{Fun: l.assertion(x.Pos(), x.Type, from, to, two), Lparen: x.Pos(), Args: []ast.Expr{x.X}, Rparen: x.End()}
 	l.replace(c, call)
@@ -181,7 +188,9 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 		}
 	}
 	inside := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
-	if i, empty := from.Underlying().(*types.Interface); empty && i.Empty() {
+	if from == nil {
+		// impossible: nothing to ask for
+	} else if i, ok := from.Underlying().(*types.Interface); ok && i.Empty() {
 		candidates := l.implementers(to)
 		if !types.IsInterface(to) {
 			candidates = []types.Type{to}
@@ -195,12 +204,15 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 				})
 			}
 		}
-		if !l.ofCompiled(to) {
-			from = nil // no more types to ask for
+		if l.ofCompiled(to) {
+			inside.List = append(inside.List, try(typ))
 		}
-	}
-	if from != nil {
+		from = nil // an any is the parameter
+	} else {
 		inside.List = append(inside.List, try(typ))
+	}
+	if i, ok := to.Underlying().(*types.Interface); ok && !l.ofCompiled(to) {
+		inside.List = append(inside.List, &ast.ExprStmt{X: l.hook("Refuse", pos, quoted(pos, types.TypeString(to, brief)), quoted(pos, methodNames(i)), id(e))})
 	}
 	body := &ast.BlockStmt{Lbrace: pos, Rbrace: pos, List: []ast.Stmt{
 		&ast.IfStmt{If: pos, Cond: &ast.BinaryExpr{X: id(e), OpPos: pos, Op: token.NEQ, Y: id("nil")}, Body: inside},
@@ -210,7 +222,7 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 		results = append(results, &ast.Field{Type: id("bool")})
 		body.List = append(body.List, &ast.ReturnStmt{Return: pos, Results: []ast.Expr{l.zero(to, pos), id("false")}})
 	} else {
-		text := &ast.BasicLit{Kind: token.STRING, ValuePos: pos, Value: strconv.Quote(types.TypeString(to, brief))}
+		text := quoted(pos, types.TypeString(to, brief))
 		body.List = append(body.List,
 			&ast.ExprStmt{X: l.hook("NotA", pos, text, id(e))},
 			&ast.ReturnStmt{Return: pos, Results: []ast.Expr{l.zero(to, pos)}})
@@ -228,6 +240,47 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 		},
 		Body: body,
 	}
+}
+
+func quoted(pos token.Pos, s string) ast.Expr {
+	return &ast.BasicLit{Kind: token.STRING, ValuePos: pos, Value: strconv.Quote(s)}
+}
+
+func methodNames(i *types.Interface) string {
+	var names []string
+	for m := range i.Methods() {
+		names = append(names, m.Name())
+	}
+	return strings.Join(names, " ")
+}
+
+// refuse stops an assertion of a compiled value to an interface that a cell declares, if it should succeed: the interpreter
+// would say no.
+func refuse(to, methods string, v any) {
+	t := reflect.TypeOf(v)
+	named := t
+	if t.Kind() == reflect.Pointer {
+		named = t.Elem()
+	}
+	if named.PkgPath() == "" || strings.HasPrefix(named.PkgPath(), "github.com/traefik/yaegi") {
+		return // a cell's value, whose type was asked for
+	}
+	for _, m := range strings.Fields(methods) {
+		if _, ok := t.MethodByName(m); !ok {
+			return
+		}
+	}
+	panic(fmt.Errorf("cells cannot assert a %s to their own interface %s; assert it to its type, or to an interface of a package", t, to))
+}
+
+// impossible reports whether no value of an interface can be of a type, as happens in instances of generic code; the
+// interpreter, like the language elsewhere, refuses to compile the question.
+func (l *lowering) impossible(from, to types.Type) bool {
+	if from == nil || to == nil || types.IsInterface(to) {
+		return false
+	}
+	i, ok := from.Underlying().(*types.Interface)
+	return ok && !types.AssertableTo(i, to)
 }
 
 // confusable reports whether an assertion to a type must look at the pair: to a paired one, and to a type that has the same

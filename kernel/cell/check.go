@@ -14,16 +14,17 @@ import (
 
 // unit is a checked cell: what is lowered, compiled and, if that succeeds, committed.
 type unit struct {
-	src     *source
-	info    *types.Info
-	decls   []*decl                         // the cell's own declarations and the dependants that are compiled again
-	plain   map[*ast.FuncDecl]*ast.FuncDecl // functions and methods that were checked in the form of plain functions
-	objects map[string]types.Object         // the new package-level objects; methods as "T.M"
-	texts   map[string]*decl                // where they come from
-	vars    map[types.Object]*types.Var     // variable of a statement -> the package-level variable that it becomes
-	order   []*types.Var                    // the values of vars in source order
-	imports map[string]string               // name -> path, of the cell's import declarations
-	last    ast.Expr                        // the last statement's expression if it has a value
+	src      *source
+	info     *types.Info
+	decls    []*decl                         // the cell's own declarations and the dependants that are compiled again
+	plain    map[*ast.FuncDecl]*ast.FuncDecl // functions and methods that were checked in the form of plain functions
+	objects  map[string]types.Object         // the new package-level objects; methods as "T.M"
+	texts    map[string]*decl                // where they come from
+	vars     map[types.Object]*types.Var     // variable of a statement -> the package-level variable that it becomes
+	order    []*types.Var                    // the values of vars in source order
+	imports  map[string]string               // name -> path, of the cell's import declarations
+	concrete bool                            // an instance of generic code is being checked
+	last     ast.Expr                        // the last statement's expression if it has a value
 }
 
 // problem is one error of the checker.
@@ -310,6 +311,9 @@ func (in *Interpreter) pass(u *unit, p *types.Package, decls []ast.Decl, last as
 		// Each cell is a package to the checker, but all are one to the reader.
 		if strings.HasPrefix(e.Msg, "implicit assignment to unexported field") && strings.Contains(e.Msg, "main.") {
 			return
+		}
+		if u.concrete && (strings.HasPrefix(e.Msg, "impossible type ") || strings.HasPrefix(e.Msg, "duplicate case ") || strings.HasPrefix(e.Msg, "\t")) {
+			return // only the instance is so special
 		}
 		msg := e.Msg
 		if name, ok := strings.CutPrefix(msg, "undefined: "); ok {

@@ -107,7 +107,10 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 			p.Scope().Insert(l.u.objects[n])
 		}
 	}
-	if err := l.in.pass(l.u, p, []ast.Decl{f}, nil); err != nil {
+	l.u.concrete = true
+	err := l.in.pass(l.u, p, []ast.Decl{f}, nil)
+	l.u.concrete = false
+	if err != nil {
 		l.fail(f.Pos(), "in the instance of %s for %s: %v", name, typeList(args), err)
 		return
 	}

@@ -148,6 +148,7 @@ func (in *Interpreter) hooks() interp.Exports {
 			"TypeName": reflect.ValueOf(in.typeName),
 
 			"Holds":     reflect.ValueOf(in.holds),
+			"Refuse":    reflect.ValueOf(refuse),
 			"NotA":      reflect.ValueOf(notA),
 			"Equal":     reflect.ValueOf(in.equal),
 			"Complex":   reflect.ValueOf(func(re, im float64) complex128 { return complex(re, im) }),

@@ -53,6 +53,9 @@ func TestLowering(t *testing.T) {
 			"var e any = T(3)\nv, ok := e.(V)\nfmt.Println(v.V(), ok)", "3 true\n", "any(&S{4}).(V).V()", "4",
 			"_, ok = any(nil).(V)\nok", "false", "_, ok = any(5).(V)\nok", "false", "any(5).(V)", "error: interface conversion: int is not V", "var none any\nnone.(fmt.Stringer)", "error: interface is nil, not fmt.Stringer",
 			"if w, ok := e.(V); ok { fmt.Print(w.V()) }", "3",
+			"import \"strings\"\nimport \"io\"\nvar r any = strings.NewReader(\"abc\")\nrd, ok := r.(io.Reader)\nok, rd != nil", "true true", "_, ok = r.(V)\nok", "false",
+			"r.(interface{ Len() int })", "error: cells cannot assert a *strings.Reader to their own interface interface{Len() int}",
+			"var er error = fmt.Errorf(\"w: %w\", io.EOF)\ner.(interface{ Unwrap() error })", "error: cells cannot assert a *fmt.wrapError",
 			"_, a := any(5).(T)\n_, b := any(T(5)).(int)\n_, c := any(T(5)).(T)\nfmt.Println(a, b, c)", "false false true\n",
 		}},
 		{"equality of interface values", []string{
