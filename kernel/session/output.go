@@ -84,7 +84,7 @@ func (o *output) admit(p []byte) []byte {
 		return p[:min(len(p), room)]
 	}
 	// p crosses the line.
-	where := "could not be kept: no file can be written"
+	where := "is not kept: " + o.record.lost
 	if path := o.record.keep(); path != "" {
 		where = "is in " + path
 	}
@@ -153,6 +153,7 @@ func (o *output) finish() {
 	defer o.mu.Unlock()
 	o.flush(true)
 	if o.taken > textLimit {
+		o.record.write()
 		note := fmt.Appendf(nil, "[linewright: %d bytes of text in all, %d not shown", o.taken, o.taken-textLimit)
 		if o.record.kept && o.record.size < o.taken {
 			note = fmt.Appendf(note, ", the first %d in the file", o.record.size)

@@ -205,7 +205,7 @@ func TestTextLimitWithoutFile(t *testing.T) {
 			out.Stream("stdout", make([]byte, 1<<20))
 		}
 	})
-	if sent := text(t, output, "stdout"); !strings.HasPrefix(sent[textLimit:], "\n[linewright: this cell has put out 64 MB of text; the rest is not shown here, the whole could not be kept") {
+	if sent := text(t, output, "stdout"); !strings.HasPrefix(sent[textLimit:], "\n[linewright: this cell has put out 64 MB of text; the rest is not shown here, the whole is not kept: no file can be written") {
 		t.Errorf("the note: %q", sent[textLimit:])
 	}
 }
@@ -215,6 +215,7 @@ func TestRecordLimit(t *testing.T) {
 	t.Setenv("TMPDIR", t.TempDir())
 	var r record
 	r.add(make([]byte, recordFrom+1))
+	r.write()
 	r.size = recordMost - 3 // as if so much had been written
 	r.add([]byte("abcdef"))
 	if r.size != recordMost || !r.full {
@@ -282,6 +283,14 @@ func BenchmarkRoundTrip(b *testing.B) {
 	c.execute("1+1", nil)
 	for b.Loop() {
 		c.execute("1+1", nil)
+	}
+}
+
+func BenchmarkText(b *testing.B) {
+	_, c := serveCells(b)
+	b.SetBytes(10 << 20)
+	for b.Loop() {
+		c.execute("import \"strings\"\nfor i := 0; i < 10240; i++ {\n\tfmt.Println(strings.Repeat(\"x\", 1023))\n}", nil)
 	}
 }
 

@@ -5,6 +5,8 @@ import (
 	"errors"
 	"io"
 	"net"
+	"os"
+	"time"
 	"unicode/utf8"
 
 	"github.com/go-zeromq/zmq4"
@@ -30,6 +32,39 @@ func newPeer(d *door, c net.Conn, replay []byte) *peer {
 	return &peer{Conn: c, door: d, out: newOutbox(c, d.limits), raw: bufio.NewReader(c), in: replay, opening: []byte{}}
 }
 
+// echo sends back what comes, in place of zmq4, until the peer is gone or has not read for a while.
+func (p *peer) echo() {
+	for {
+		p.in = nil
+		if err := p.next(); err != nil {
+			p.fail(err)
+			return
+		}
+		if len(p.in) == 0 { // a command
+			continue
+		}
+		p.SetWriteDeadline(time.Now().Add(patience))
+		if _, err := p.Conn.Write(p.in); err != nil {
+			if errors.Is(err, os.ErrDeadlineExceeded) {
+				err = errFull
+			}
+			p.fail(err)
+			return
+		}
+	}
+}
+
+// fail closes the connection, and says why unless the peer has just left.
+func (p *peer) fail(err error) {
+	if p.out.gaveUp() {
+		err = errFull
+	}
+	if !errors.Is(err, io.EOF) && !errors.Is(err, net.ErrClosed) {
+		p.door.refused(p.RemoteAddr(), err)
+	}
+	p.Close()
+}
+
 // Read implements net.Conn for zmq4.
 func (p *peer) Read(b []byte) (int, error) {
 	for len(p.in) == 0 {
@@ -39,13 +74,7 @@ func (p *peer) Read(b []byte) (int, error) {
 			p.topic, p.subscribed = nil, true
 		}
 		if err := p.next(); err != nil {
-			if p.out.gaveUp() {
-				err = errFull
-			}
-			if !errors.Is(err, io.EOF) && !errors.Is(err, net.ErrClosed) {
-				p.door.refused(p.RemoteAddr(), err)
-			}
-			p.Close()
+			p.fail(err)
 			return 0, io.EOF
 		}
 	}

@@ -43,6 +43,9 @@ func Listen(c Connection, log *slog.Logger) (*Server, error) {
 		}
 	}
 	for _, ch := range channels {
+		if ch == Heartbeat {
+			continue
+		}
 		if err := s.start(ch); err != nil {
 			s.Close()
 			return nil, fmt.Errorf("wire: cannot start the %s channel: %w", ch, err)
@@ -67,7 +70,7 @@ func (s *Server) open(ch Channel, l *lobby) error {
 	switch ch {
 	case IOPub:
 		kind, bounds = zmq4.Pub, broadcastLimits
-	case Heartbeat: // a router echoes its clients side by side; a replier would wait for one that is lost
+	case Heartbeat: // a router, since a replier would wait for a client that is lost
 		bounds = heartbeatLimits
 	}
 	network, address := s.at.address(ch)
@@ -136,14 +139,17 @@ func (s *Server) receive(ch Channel, put func(*Queue[*Message], *Message)) {
 	}
 }
 
-// echo answers heartbeats.
+// echo answers heartbeats, each client in a goroutine of its own and without zmq4: while cells keep every core busy, each
+// goroutine that a beat has to pass costs milliseconds.
 func (s *Server) echo() {
+	d := s.doors[Heartbeat]
+	go d.serve()
 	for {
-		m, err := s.sockets[Heartbeat].Recv()
+		c, err := d.Accept()
 		if err != nil {
 			return
 		}
-		s.sockets[Heartbeat].Send(m) // an error means that the client is gone
+		go c.(*peer).echo()
 	}
 }
 

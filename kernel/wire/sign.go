@@ -14,14 +14,18 @@ type signer struct {
 	key []byte
 
 	mu     sync.Mutex
-	recent map[digest]struct{} // signatures accepted of late; guarded by mu
-	older  map[digest]struct{} // those of the generation before; guarded by mu
+	recent map[memo]struct{} // signatures accepted of late; guarded by mu
+	older  map[memo]struct{} // those of the generation before; guarded by mu
 }
 
 type digest [sha256.Size]byte
 
+// A memo is what is remembered of a signature. Nobody without the key can make two signatures that begin alike, and by
+// chance it does not happen in half of one's bits.
+type memo [sha256.Size / 2]byte
+
 // generation is how many accepted signatures are remembered before the older half is forgotten: between 32,768 and
-// 65,536 in all, some megabytes in a session that long. The reference kernel remembers 65,536.
+// 65,536 in all, one or two megabytes in a session that long. The reference kernel remembers 65,536.
 const generation = 1 << 15
 
 var (
@@ -69,16 +73,17 @@ func (s *signer) verify(signature []byte, frames [][]byte) error {
 	}
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	_, again := s.recent[want]
+	this := memo(want[:])
+	_, again := s.recent[this]
 	if !again {
-		_, again = s.older[want]
+		_, again = s.older[this]
 	}
 	if again {
 		return errReplay
 	}
 	if s.recent == nil || len(s.recent) == generation {
-		s.older, s.recent = s.recent, make(map[digest]struct{})
+		s.older, s.recent = s.recent, make(map[memo]struct{})
 	}
-	s.recent[want] = struct{}{}
+	s.recent[this] = struct{}{}
 	return nil
 }
