@@ -40,7 +40,8 @@ func TestWelcome(t *testing.T) {
 	some.send(wireFrame(flagCommand, "\x09SUBSCRIBEstatus <é>"))
 	expect(some, "status <é>", `{"subscription":"status <é>"}`)
 	expect(all, "status <é>", `{"subscription":"status <é>"}`)
-	some.send(wireFrame(0, "\x00kernel."))
+	some.send(wireFrame(0, "\x00kernel."), wireFrame(flagCommand, "\x04PING\x00\x00"))
+	some.frame() // the answer comes when what was before it has taken effect
 	ask(t, k, `{}`)
 	for _, want := range []string{"busy", "idle"} {
 		if m := decoded(all.message()); string(m.Content) != `{"execution_state":"`+want+`"}` {
