@@ -2,136 +2,32 @@ package frontends
 
 import (
 	"context"
+	_ "embed"
 	"fmt"
-	"net"
-	"net/http"
-	"os"
-	"os/exec"
-	"path/filepath"
 	"strings"
-	"syscall"
 	"testing"
 	"time"
 
 	"github.com/chromedp/chromedp"
 )
 
-// notebookServer starts the classic notebook server on a folder and returns its address; the test's end stops it.
-func notebookServer(t *testing.T, folder string) (url, token string) {
-	t.Helper()
-	program := need(t, "jupyter-notebook")
-	l, err := net.Listen("tcp", "127.0.0.1:0")
-	if err != nil {
-		t.Fatal(err)
-	}
-	port := l.Addr().(*net.TCPAddr).Port
-	l.Close()
-	token = "linewright-test"
-	cmd := exec.Command(program, "--no-browser", "--allow-root", "--ip=127.0.0.1", fmt.Sprintf("--port=%d", port),
-		"--NotebookApp.token="+token, "--NotebookApp.port_retries=0", "--notebook-dir="+folder)
-	cmd.Env = installed
-	log, err := os.Create(filepath.Join(t.TempDir(), "server.log"))
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer log.Close()
-	cmd.Stdout, cmd.Stderr = log, log
-	if err := cmd.Start(); err != nil {
-		t.Fatal(err)
-	}
-	t.Cleanup(func() {
-		cmd.Process.Signal(syscall.SIGTERM)
-		done := make(chan struct{})
-		go func() { cmd.Wait(); close(done) }()
-		select {
-		case <-done:
-		case <-time.After(15 * time.Second):
-			cmd.Process.Kill()
-			<-done
-		}
-		noKernelLeft(t)
-	})
-	url = fmt.Sprintf("http://127.0.0.1:%d", port)
-	for range 300 {
-		if r, err := http.Get(url + "/api?token=" + token); err == nil {
-			r.Body.Close()
-			return url, token
-		}
-		time.Sleep(100 * time.Millisecond)
-	}
-	text, _ := os.ReadFile(log.Name())
-	t.Fatalf("the notebook server did not answer:\n%s", text)
-	return "", ""
-}
-
-// browser opens a headless Chromium tab; the test's end closes it.
-func browser(t *testing.T, limit time.Duration) context.Context {
-	t.Helper()
-	path := need(t, "chromium")
-	ctx, cancel := context.WithTimeout(t.Context(), limit)
-	t.Cleanup(cancel)
-	ctx, cancel = chromedp.NewExecAllocator(ctx, chromedp.ExecPath(path), chromedp.Headless, chromedp.NoSandbox,
-		chromedp.DisableGPU, chromedp.NoFirstRun, chromedp.UserDataDir(t.TempDir()), chromedp.WindowSize(1200, 1600),
-		chromedp.Flag("disable-quic", true), chromedp.Flag("disable-background-networking", true),
-		chromedp.Flag("disable-component-update", true), chromedp.Flag("disable-sync", true))
-	t.Cleanup(cancel)
-	ctx, cancel = chromedp.NewContext(ctx)
-	t.Cleanup(cancel)
-	return ctx
-}
-
-// do runs browser actions; on failure it says in which step and, where screenshots are kept, shows the page.
-func do(t *testing.T, ctx context.Context, step string, actions ...chromedp.Action[chromedp.Void]) {
-	t.Helper()
-	if err := chromedp.Do(ctx, actions...); err != nil {
-		screenshot(t, ctx, "failed")
-		t.Fatalf("%s: %v", step, err)
-	}
-}
-
-// value evaluates a JavaScript expression of the page.
-func value[T any](t *testing.T, ctx context.Context, expression string) T {
-	t.Helper()
-	v, err := chromedp.Run(ctx, chromedp.Evaluate[T](expression))
-	if err != nil {
-		t.Fatalf("%s: %v", expression, err)
-	}
-	return v
-}
-
-// screenshot keeps a picture of the page in the folder that LINEWRIGHT_SCREENSHOTS names, if it names one.
-func screenshot(t *testing.T, ctx context.Context, name string) {
-	t.Helper()
-	folder := os.Getenv("LINEWRIGHT_SCREENSHOTS")
-	if folder == "" {
-		return
-	}
-	png, err := chromedp.Run(ctx, chromedp.FullScreenshot(100))
-	if err != nil {
-		t.Log("no screenshot:", err)
-		return
-	}
-	if err := os.WriteFile(filepath.Join(folder, name+".png"), png, 0o644); err != nil {
-		t.Log(err)
-	}
-}
-
-// script runs JavaScript in the page.
-func script(text string) chromedp.Action[chromedp.Void] {
-	return chromedp.Evaluate[chromedp.Void](text)
-}
-
-// until waits for a JavaScript condition of the page.
-func until(condition string) chromedp.Action[chromedp.Void] {
-	return chromedp.Poll[chromedp.Void](condition, chromedp.WithPollingInterval(100*time.Millisecond), chromedp.WithPollingTimeout(60*time.Second))
-}
-
 const (
 	connected = `window.Jupyter && Jupyter.notebook && Jupyter.notebook.kernel && Jupyter.notebook.kernel.is_connected()`
 	idle      = `Jupyter.notebook.get_cells().every(c => c.cell_type != 'code' || !c.element.find('.input_prompt').text().includes('*'))`
 	figures   = `[...document.querySelectorAll('.output_area img, .output_area svg')].map(e => e.getBoundingClientRect().width)`
 	last      = `Jupyter.notebook.get_cell(Jupyter.notebook.ncells() - 1).element`
+	before    = `Jupyter.notebook.get_cell(Jupyter.notebook.ncells() - 2).element` // the cell before the last
 )
+
+// readable is JavaScript that measures a page: window.contrast(element) and window.opaque(picture).
+//
+//go:embed testdata/readable.js
+var readable string
+
+// dark turns the notebook's page dark, as a user's style sheet does.
+//
+//go:embed testdata/dark.css
+var dark string
 
 // appendCell adds a cell at the end of the notebook and runs it.
 func appendCell(code string) chromedp.Action[chromedp.Void] {
@@ -141,38 +37,115 @@ func appendCell(code string) chromedp.Action[chromedp.Void] {
 		Jupyter.notebook.execute_cell();`, code))
 }
 
+// openNotebook opens a copy of a notebook in the classic notebook that a program serves.
+func openNotebook(t *testing.T, program, path string) context.Context {
+	t.Helper()
+	folder := t.TempDir()
+	copyTo(t, folder, path)
+	url := notebookServer(t, program, folder)
+	ctx := browser(t, 3*time.Minute)
+	name := path[strings.LastIndex(path, "/")+1:]
+	do(t, ctx, "open the notebook", chromedp.Navigate(url+"/notebooks/"+name+"?token="+token), until(connected))
+	return ctx
+}
+
 // TestClassicNotebook works in the classic notebook as its user does: run all, look at the figure, stop a cell with
 // the interrupt button, restart.
 func TestClassicNotebook(t *testing.T) {
-	folder := t.TempDir()
-	source, err := os.ReadFile("testdata/session.ipynb")
-	if err != nil {
-		t.Fatal(err)
-	}
-	if err := os.WriteFile(filepath.Join(folder, "session.ipynb"), source, 0o644); err != nil {
-		t.Fatal(err)
-	}
-	url, token := notebookServer(t, folder)
-	ctx := browser(t, 3*time.Minute)
+	for _, program := range []string{"jupyter-notebook", "jupyter-nbclassic"} {
+		t.Run(program, func(t *testing.T) {
+			ctx := openNotebook(t, program, "testdata/session.ipynb")
+			do(t, ctx, "run all cells", script(`Jupyter.notebook.execute_all_cells()`), until(figures+`.some(w => w > 50)`), until(idle))
+			screenshot(t, ctx, program+"-run-all")
+			if width := value[float64](t, ctx, `Math.max(...`+figures+`)`); width < 300 {
+				t.Errorf("the inline figure is %.0f px wide", width)
+			}
+			if !value[bool](t, ctx, `[...document.querySelectorAll('.output_html')].some(e => e.innerText.includes('AMI'))`) {
+				t.Error("no card of the code on the page")
+			}
 
-	do(t, ctx, "open the notebook", chromedp.Navigate(url+"/notebooks/session.ipynb?token="+token), until(connected))
+			do(t, ctx, "start an endless cell", appendCell("fmt.Println(\"runs\")\nfor {\n}"), until(last+`.find('.output_stdout').text().includes('runs')`))
+			do(t, ctx, "press the interrupt button", chromedp.Click(`[data-jupyter-action='jupyter-notebook:interrupt-kernel']`),
+				until(last+`.find('.output_error').length > 0`), until(idle))
+			screenshot(t, ctx, program+"-interrupted")
+
+			do(t, ctx, "restart the kernel", script(`
+				Jupyter.notebook.events.one('kernel_ready.Kernel', () => window.restarted = true);
+				Jupyter.notebook.kernel.restart()`), until(`window.restarted`), until(connected),
+				appendCell(`fmt.Println("after the restart")`), until(last+`.find('.output_text').text().includes('after the restart')`))
+			if got, want := value[string](t, ctx, last+`.find('.input_prompt').text()`), "In [1]:"; !strings.Contains(strings.ReplaceAll(got, "\u00a0", " "), want) {
+				t.Errorf("the first cell after a restart is %q, want %q", got, want)
+			}
+		})
+	}
+}
+
+// TestClassicPage looks at everything else that a cell puts on the classic notebook's page: a table, an error, a slot
+// that is updated in place, a question; and at all of it on a dark page.
+func TestClassicPage(t *testing.T) {
+	ctx := openNotebook(t, "jupyter-notebook", "testdata/session.ipynb")
 	do(t, ctx, "run all cells", script(`Jupyter.notebook.execute_all_cells()`), until(figures+`.some(w => w > 50)`), until(idle))
-	screenshot(t, ctx, "classic-run-all")
-	if width := value[float64](t, ctx, `Math.max(...`+figures+`)`); width < 300 {
-		t.Errorf("the inline figure is %.0f px wide", width)
-	}
-	if !value[bool](t, ctx, `[...document.querySelectorAll('.output_html')].some(e => e.innerText.includes('AMI'))`) {
-		t.Error("no card of the code on the page")
+
+	do(t, ctx, "show a table", appendCell(`linecode.AMI().Levels()`), until(last+`.find('.output_html table').length > 0`), until(idle))
+	if got := value[string](t, ctx, last+`.find('.output_html table').text()`); !strings.Contains(got, "3 numbers") || !strings.Contains(got, "-1") {
+		t.Errorf("the table of AMI's levels lacks their number or -1: %q", got)
 	}
 
-	do(t, ctx, "start an endless cell", appendCell("for {\n}"), until(last+`.hasClass('running')`), chromedp.Sleep(500*time.Millisecond))
-	do(t, ctx, "press the interrupt button", chromedp.Click(`[data-jupyter-action='jupyter-notebook:interrupt-kernel']`),
-		until(last+`.find('.output_error').length > 0`), until(idle))
-	screenshot(t, ctx, "classic-interrupted")
+	do(t, ctx, "fail", appendCell("a := uint8(1)\nb := \"x\"\na + b"), until(last+`.find('.output_error').length > 0`), until(idle))
+	failure := value[string](t, ctx, last+`.find('.output_error').text()`)
+	if !strings.Contains(failure, "a + b") || !strings.Contains(failure, "^") || strings.ContainsRune(failure, '\x1b') {
+		t.Errorf("the error does not show its line with a caret in plain characters:\n%s", failure)
+	}
 
-	do(t, ctx, "restart the kernel", script(`Jupyter.notebook.kernel.restart()`), chromedp.Sleep(time.Second), until(connected),
-		appendCell(`fmt.Println("after the restart")`), until(last+`.find('.output_text').text().includes('after the restart')`))
-	if got, want := value[string](t, ctx, last+`.find('.input_prompt').text()`), "In [1]:"; !strings.Contains(strings.ReplaceAll(got, "\u00a0", " "), want) {
-		t.Errorf("the first cell after a restart is %q, want %q", got, want)
+	do(t, ctx, "set a slot", appendCell(`page.Slot("best").Set("one")`), until(last+`.find('.output_text').text().includes('one')`), until(idle))
+	do(t, ctx, "set it again in another cell", appendCell(`page.Slot("best").Set("two")`), until(before+`.find('.output_text').text().includes('two')`), until(idle))
+	if got := value[string](t, ctx, before+`.find('.output').text()`); strings.Contains(got, "one") {
+		t.Errorf("the slot was added to, not updated: %q", got)
+	}
+	if got := value[string](t, ctx, last+`.find('.output').text()`); strings.TrimSpace(got) != "" {
+		t.Errorf("the cell that updates a slot shows %q of its own", got)
+	}
+
+	do(t, ctx, "ask", appendCell(`fmt.Println("chosen:", page.Ask("candidate? "))`), until(last+`.find('input.raw_input').length > 0`),
+		chromedp.SendKeys(`input.raw_input`, "HDB3\r"), until(last+`.find('.output_stdout').text().includes('chosen: HDB3')`), until(idle))
+	screenshot(t, ctx, "classic-page")
+
+	do(t, ctx, "turn the page dark", script(fmt.Sprintf(`document.head.appendChild(document.createElement('style')).textContent = %q`, dark)), script(readable))
+	screenshot(t, ctx, "classic-dark")
+	const lowest = 4.5 // WCAG 2.1, criterion 1.4.3: contrast of text that can be read
+	for _, what := range []string{".output_html th", ".output_html td", ".output_html caption", ".output_stdout pre", ".output_error pre", ".output_text pre"} {
+		if got := value[float64](t, ctx, fmt.Sprintf(`Math.min(...[...document.querySelectorAll(%q)].map(contrast))`, what)); !(got >= lowest && got <= 21) {
+			t.Errorf("%s: contrast %.2g on a dark page, want at least %v", what, got, lowest)
+		}
+	}
+	do(t, ctx, "look at the figure's background", script(`opaque(document.querySelector('.output_svg svg')).then(o => window.background = String(o))`), until(`window.background`))
+	if got := value[string](t, ctx, `window.background`); got != "true" {
+		t.Errorf("the figure lets a dark page shine through: opaque = %s", got)
+	}
+}
+
+// TestClassicNotTrusted opens a notebook with stored outputs that this user has never run: scripts and SVG are kept
+// off the page there, and the figures show as PNG, in their nominal size.
+func TestClassicNotTrusted(t *testing.T) {
+	ctx := openNotebook(t, "jupyter-notebook", "../../notebooks/hoist-link.ipynb")
+	do(t, ctx, "wait for the figures", until(`[...document.querySelectorAll('.output_area img')].some(e => e.complete && e.naturalWidth > 0)`))
+	screenshot(t, ctx, "classic-not-trusted")
+	if value[bool](t, ctx, `Jupyter.notebook.trusted`) {
+		t.Fatal("the server trusts a notebook that nobody has run")
+	}
+	if n := value[int](t, ctx, `document.querySelectorAll('.output_svg svg').length`); n > 0 {
+		t.Errorf("%d SVG figures in a notebook that is not trusted", n)
+	}
+	scale := value[[]float64](t, ctx, `[...document.querySelectorAll('.output_png img')].map(e => e.naturalWidth / e.getBoundingClientRect().width)`)
+	if len(scale) == 0 {
+		t.Fatal("no figures")
+	}
+	for i, s := range scale {
+		if s < 1.99 || s > 2.01 {
+			t.Errorf("figure %d has %.3g pixels a page pixel, want 2", i, s)
+		}
+	}
+	if n := value[int](t, ctx, `document.querySelectorAll('.output_html table td').length`); n == 0 {
+		t.Error("the cards and tables of the notebook are not on the page")
 	}
 }
