@@ -103,6 +103,8 @@ func (in *Interpreter) check(src *source, p *plan) (*unit, error) {
 	if u.last != nil {
 		if tv := u.info.Types[u.last]; !tv.IsValue() {
 			u.last = nil
+		} else if err := in.overflow(u.last, tv); err != nil {
+			return nil, err
 		}
 	}
 	for _, id := range src.variables() {
@@ -299,7 +301,7 @@ func (in *Interpreter) pass(u *unit, p *types.Package, decls []ast.Decl, last as
 		f.Package = decls[0].Pos()
 	}
 	f.Decls = append(f.Decls, decls...)
-	var bad []problem
+	var found []types.Error
 	conf := types.Config{Importer: in.lib, GoVersion: goVersion, Error: func(err error) {
 		var e types.Error
 		if !errors.As(err, &e) || e.Soft {
@@ -315,16 +317,14 @@ func (in *Interpreter) pass(u *unit, p *types.Package, decls []ast.Decl, last as
 		if u.concrete && (strings.HasPrefix(e.Msg, "impossible type ") || strings.HasPrefix(e.Msg, "duplicate case ") || strings.HasPrefix(e.Msg, "\t")) {
 			return // only the instance is so special
 		}
-		msg := e.Msg
-		if name, ok := strings.CutPrefix(msg, "undefined: "); ok {
-			if path := in.lib.named(name); path != "" {
-				msg += fmt.Sprintf("; if the package is meant, import %q", path)
-			}
-		}
-		bad = append(bad, problem{e.Pos, msg})
+		found = append(found, e)
 	}}
 	// The errors come one by one to the function above.
 	_ = types.NewChecker(&conf, in.fset, p, u.info).Files([]*ast.File{f})
+	var bad []problem
+	for _, e := range found {
+		bad = append(bad, problem{e.Pos, in.hint(u, p, decls, e)})
+	}
 	return in.problems(bad)
 }
 

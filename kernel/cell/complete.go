@@ -147,7 +147,7 @@ func (in *Interpreter) candidates(code string, start, offset int) []candidate {
 					e = kv.Key
 				}
 				if id, ok := e.(*ast.Ident); ok && id.Name == cursorName {
-					list = append(list, p.fieldsOf(p.info.TypeOf(n))...)
+					list = append(list, fieldsOf(p.info.TypeOf(n))...)
 				}
 			}
 		}
@@ -170,7 +170,7 @@ func (p *probe) members(x ast.Expr) []candidate {
 	if !ok || tv.Type == nil {
 		return nil
 	}
-	return p.fieldsAndMethods(tv.Type, tv.IsType())
+	return fieldsAndMethods(tv.Type, tv.IsType())
 }
 
 func (p *probe) packageMembers(pkg *types.Package) []candidate {
@@ -189,7 +189,7 @@ func (p *probe) packageMembers(pkg *types.Package) []candidate {
 }
 
 // fieldsAndMethods returns what a selector of a value of type t can name; of a type only its methods.
-func (p *probe) fieldsAndMethods(t types.Type, onlyMethods bool) []candidate {
+func fieldsAndMethods(t types.Type, onlyMethods bool) []candidate {
 	var list []candidate
 	if _, ptr := t.Underlying().(*types.Pointer); !ptr && !types.IsInterface(t) {
 		t = types.NewPointer(t) // as if addressable
@@ -200,13 +200,13 @@ func (p *probe) fieldsAndMethods(t types.Type, onlyMethods bool) []candidate {
 		}
 	}
 	if !onlyMethods {
-		list = append(list, p.fieldsOf(t)...)
+		list = append(list, fieldsOf(t)...)
 	}
 	return list
 }
 
 // fieldsOf returns the fields of a struct or of what points to one, embedded ones too.
-func (p *probe) fieldsOf(t types.Type) []candidate {
+func fieldsOf(t types.Type) []candidate {
 	var list []candidate
 	seen := map[types.Type]bool{}
 	var walk func(t types.Type, depth int)

@@ -38,6 +38,9 @@ func file(n int) string { return fmt.Sprintf("cell[%d]/%s", n, fileBase) }
 // parse parses a cell. Its positions, looked up in fset, are those of the cell.
 func parse(fset *token.FileSet, n int, text string) (*source, error) {
 	src := &source{n: n, text: text}
+	if err := surplus(n, text); err != nil {
+		return nil, err
+	}
 	var errs scanner.ErrorList
 	statements := []byte(text)
 	chunks := split(text)
@@ -69,11 +72,6 @@ func parse(fset *token.FileSet, n int, text string) (*source, error) {
 	}
 	if len(errs) > 0 {
 		return nil, inside(errs, n, text)
-	}
-	if len(f.Decls) != 1 {
-		// A closing bracket too many ends the function early.
-		at := fset.Position(f.Decls[0].End())
-		return nil, scanner.ErrorList{{Pos: at, Msg: "unexpected }: it closes nothing"}}
 	}
 	src.fn = f.Decls[0].(*ast.FuncDecl)
 	if src.list != nil {
@@ -118,18 +116,39 @@ func (s *source) values(fset *token.FileSet, c chunk) bool {
 	return s.list != nil && !s.list.Ellipsis.IsValid()
 }
 
-// inside keeps the errors in the cell's text: what the parser says behind its end means that the end came too early, and
-// matters only if nothing else is wrong.
+// inside keeps the errors in the cell's text. What the parser says at or behind its end, of brackets that are ours, means that
+// the end came too early, and matters only if nothing else is wrong.
 func inside(errs scanner.ErrorList, n int, text string) error {
 	errs.Sort()
-	end := strings.Count(text, "\n") + 1
-	kept := slices.DeleteFunc(slices.Clone(errs), func(e *scanner.Error) bool { return e.Pos.Line > end })
+	line, column := place(text, len(strings.TrimRight(text, " \t\r\n")))
+	kept := slices.DeleteFunc(slices.Clone(errs), func(e *scanner.Error) bool {
+		return e.Pos.Line > line || e.Pos.Line == line && e.Pos.Column >= column
+	})
 	if len(kept) > 0 {
 		return kept
 	}
-	line, column := place(text, len(strings.TrimRight(text, " \t\r\n")))
-	msg := strings.TrimSuffix(errs[0].Msg, ", found 'EOF'")
-	return scanner.ErrorList{{Pos: token.Position{Filename: file(n), Line: line, Column: column}, Msg: "the cell ends too early: " + msg}}
+	msg, rest, _ := strings.Cut(errs[0].Msg, ", found ")
+	if rest != "" {
+		msg += ", found the end of the cell"
+	}
+	return scanner.ErrorList{{Pos: token.Position{Filename: file(n), Line: line, Column: column}, Msg: msg}}
+}
+
+// surplus finds a closing bracket that closes nothing.
+func surplus(n int, text string) error {
+	depth := 0
+	for _, it := range tokens(text) {
+		switch it.tok {
+		case token.LPAREN, token.LBRACE, token.LBRACK:
+			depth++
+		case token.RPAREN, token.RBRACE, token.RBRACK:
+			if depth--; depth < 0 {
+				line, column := place(text, it.start)
+				return scanner.ErrorList{{Pos: token.Position{Filename: file(n), Line: line, Column: column}, Msg: "unexpected " + it.tok.String() + ": it closes nothing"}}
+			}
+		}
+	}
+	return nil
 }
 
 // parse parses the declaration's text, anew each time, since the lowering changes the tree.

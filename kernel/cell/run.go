@@ -176,7 +176,8 @@ func (in *Interpreter) leave() { runtime.Goexit() }
 
 // failed is the error of a cell whose last expression is an error.
 func (r *run) failed(err error) error {
-	return &Error{Name: "error", Value: err.Error(), Trace: []string{err.Error()}}
+	msg := goWords.Replace(err.Error())
+	return &Error{Name: "error", Value: msg, Trace: []string{msg}}
 }
 
 // compileError is the error of a cell that did not compile: each finding with its line and a mark under the place.

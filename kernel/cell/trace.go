@@ -159,7 +159,7 @@ func (in *Interpreter) panicError(v any) *Error {
 	value, own := thrown(v)
 	if err, ok := value.(error); ok && !own {
 		if _, ok := err.(runtime.Error); !ok {
-			e := &Error{Name: "error", Value: clean(err.Error())}
+			e := &Error{Name: "error", Value: goWords.Replace(clean(err.Error()))}
 			e.Trace = []string{e.Value}
 			if len(places) > 0 {
 				e.Trace = append(e.Trace, "    "+places[0].where)
