@@ -145,6 +145,7 @@ func (l *lowering) head(c *astutil.Cursor, s ast.Stmt, init ast.Stmt) {
 // zeroResults sets a function's named results to zero where it starts: the interpreter leaves in them what the variable held
 // that the result is assigned to.
 func (l *lowering) zeroResults(t *ast.FuncType, body *ast.BlockStmt) {
+	nameParams(t)
 	if t.Results == nil || body == nil {
 		return
 	}
@@ -168,6 +169,15 @@ func (l *lowering) zeroResults(t *ast.FuncType, body *ast.BlockStmt) {
 		}
 	}
 	body.List = append(list, body.List...)
+}
+
+// nameParams names the parameters that have no name: the interpreter takes several of them for one.
+func nameParams(t *ast.FuncType) {
+	for _, f := range t.Params.List {
+		if len(f.Names) == 0 {
+			f.Names = []*ast.Ident{{Name: "_", NamePos: f.Pos()}}
+		}
+	}
 }
 
 // extract puts statements where only one may stand: in the head of an if or a for, as a call of a function literal.
