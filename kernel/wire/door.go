@@ -70,9 +70,10 @@ type door struct {
 	net.Listener
 	kind       zmq4.SocketType
 	limits     limits
-	subscribed func(p *peer, topic string, first bool) // a subscription has taken effect
-	left       func(p *peer)                           // a peer is gone
-	refused    func(peer net.Addr, why error)          // a peer was sent away
+	entered    func(c net.Conn)                           // a connection was made; its handshake begins
+	subscribed func(c net.Conn, topic string, first bool) // a subscription has taken effect
+	left       func(c net.Conn)                           // a connection is gone
+	refused    func(peer net.Addr, why error)             // a peer was sent away
 
 	ready  chan net.Conn
 	closed chan struct{}
@@ -133,6 +134,7 @@ func (d *door) serve() {
 				return
 			}
 		}
+		d.entered(c)
 		go d.admit(c)
 	}
 }
@@ -142,6 +144,7 @@ func (d *door) admit(c net.Conn) {
 	if err != nil {
 		d.refused(c.RemoteAddr(), err)
 		c.Close()
+		d.left(c)
 		return
 	}
 	p := newPeer(d, c, replay)
@@ -159,7 +162,7 @@ func (d *door) forget(p *peer) {
 	d.mu.Lock()
 	delete(d.peers, p)
 	d.mu.Unlock()
-	d.left(p)
+	d.left(p.Conn)
 }
 
 // Accept implements net.Listener for zmq4.

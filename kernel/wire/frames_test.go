@@ -199,7 +199,7 @@ func FuzzPeer(f *testing.F) {
 	f.Add(longHeader(1, 1<<63))
 	f.Fuzz(func(t *testing.T, sent []byte) {
 		for _, d := range []*door{{kind: zmq4.Router, limits: heartbeatLimits}, {kind: zmq4.Pub, limits: broadcastLimits}} {
-			d.subscribed, d.left = func(*peer, string, bool) {}, func(*peer) {}
+			d.subscribed, d.left = func(net.Conn, string, bool) {}, func(net.Conn) {}
 			d.refused, d.peers = func(net.Addr, error) {}, map[*peer]struct{}{}
 			p := newPeer(d, &script{in: bytes.NewReader(sent)}, nil)
 			got, _ := io.ReadAll(p)

@@ -1,6 +1,7 @@
 package wire
 
 import (
+	"net"
 	"slices"
 	"sync"
 	"time"
@@ -17,14 +18,17 @@ const (
 // messages of its first request would often be published before it could hear them, and it would wait for ever.
 //
 // Nothing on the wire says which subscription belongs to which client. A new client takes the oldest fresh subscription
-// that no other has taken, and one that was held in vain takes the next that comes. Only its own requests are held.
+// that no other has taken, but not while any connection is on its way to a subscription: that may be its own, and the
+// fresh one somebody's who only listens. A client that was held in vain takes the next subscription that comes. Only its
+// own requests are held.
 type lobby struct {
 	mu    sync.Mutex
-	known map[string]bool      // clients let through; guarded by mu
-	held  map[string][]arrival // guarded by mu
-	line  []string             // clients held, in their order; guarded by mu
-	fresh []subscription       // that no client has taken, oldest first; guarded by mu
-	vain  []time.Time          // when clients were let through without one, oldest first; guarded by mu
+	known map[string]bool        // clients let through; guarded by mu
+	held  map[string][]arrival   // guarded by mu
+	line  []string               // clients held, in their order; guarded by mu
+	fresh []subscription         // that no client has taken, oldest first; guarded by mu
+	vain  []time.Time            // when clients were let through without one, oldest first; guarded by mu
+	under map[net.Conn]time.Time // connections without a subscription, since when; guarded by mu
 }
 
 type arrival struct {
@@ -33,12 +37,12 @@ type arrival struct {
 }
 
 type subscription struct {
-	of *peer
+	of net.Conn
 	at time.Time
 }
 
 func newLobby() *lobby {
-	return &lobby{known: map[string]bool{}, held: map[string][]arrival{}}
+	return &lobby{known: map[string]bool{}, held: map[string][]arrival{}, under: map[net.Conn]time.Time{}}
 }
 
 // put lets a message through to its queue or holds it. A client is known by its first routing frame, which front ends
@@ -57,12 +61,8 @@ func (l *lobby) put(to *Queue[*Message], m *Message) {
 	}
 	l.held[client] = []arrival{{m, to}}
 	l.line = append(l.line, client)
-	for len(l.fresh) > 0 && time.Since(l.fresh[0].at) > freshFor {
-		l.fresh = l.fresh[1:]
-	}
-	if len(l.fresh) > 0 {
-		l.fresh = l.fresh[1:]
-		l.release(client)
+	l.advance()
+	if l.known[client] {
 		return
 	}
 	time.AfterFunc(longestHold, func() {
@@ -74,32 +74,57 @@ func (l *lobby) put(to *Queue[*Message], m *Message) {
 	})
 }
 
-// subscribed gives the first subscription of a connection to the client that has waited longest.
-func (l *lobby) subscribed(p *peer) {
+// entered counts a connection to the broadcast whose handshake begins.
+func (l *lobby) entered(c net.Conn) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	if len(l.line) > 0 {
-		l.release(l.line[0])
-		return
-	}
+	l.under[c] = time.Now()
+}
+
+// subscribed gives the first subscription of a connection to the client that has waited longest.
+func (l *lobby) subscribed(c net.Conn) {
+	l.mu.Lock()
+	defer l.mu.Unlock()
+	delete(l.under, c)
 	for len(l.vain) > 0 {
 		late := time.Since(l.vain[0])
 		l.vain = l.vain[1:]
 		if late <= freshFor {
+			l.advance()
 			return
 		}
 	}
 	if len(l.fresh) == maxKnown {
 		l.fresh = l.fresh[1:]
 	}
-	l.fresh = append(l.fresh, subscription{p, time.Now()})
+	l.fresh = append(l.fresh, subscription{c, time.Now()})
+	l.advance()
 }
 
 // left forgets a connection that is closed.
-func (l *lobby) left(p *peer) {
+func (l *lobby) left(c net.Conn) {
 	l.mu.Lock()
 	defer l.mu.Unlock()
-	l.fresh = slices.DeleteFunc(l.fresh, func(s subscription) bool { return s.of == p })
+	delete(l.under, c)
+	l.fresh = slices.DeleteFunc(l.fresh, func(s subscription) bool { return s.of == c })
+	l.advance()
+}
+
+// advance lets clients through, with mu held, as long as there are fresh subscriptions and none under way. A connection
+// that has been on its way for long is nobody's who asks at once.
+func (l *lobby) advance() {
+	for _, since := range l.under {
+		if time.Since(since) < longestHold {
+			return
+		}
+	}
+	for len(l.fresh) > 0 && time.Since(l.fresh[0].at) > freshFor {
+		l.fresh = l.fresh[1:]
+	}
+	for len(l.fresh) > 0 && len(l.line) > 0 {
+		l.fresh = l.fresh[1:]
+		l.release(l.line[0])
+	}
 }
 
 // release lets a client through, with mu held, and reports whether it was held.

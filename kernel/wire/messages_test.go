@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"fmt"
 	"log/slog"
+	"net"
 	"os"
 	"path/filepath"
 	"strings"
@@ -210,7 +211,8 @@ func TestLobby(t *testing.T) {
 	if got := passed(); got != "" {
 		t.Fatalf("let through without a subscription: %s", got)
 	}
-	var peers [6]peer
+	var peers [6]net.TCPConn
+	var others [4]net.TCPConn
 	l.subscribed(&peers[1])
 	if got := passed(); got != "aa" {
 		t.Errorf("first subscription lets %q through, want a's two", got)
@@ -237,6 +239,23 @@ func TestLobby(t *testing.T) {
 	l.put(out, from("e"))
 	if got := passed(); got != "" {
 		t.Errorf("%q is let through on another's subscription", got)
+	}
+	l.entered(&others[0])
+	l.subscribed(&others[1]) // somebody's who only listens, perhaps
+	l.put(out, from("f"))
+	if got := passed(); got != "" {
+		t.Errorf("%q is let through while a connection has yet to subscribe", got)
+	}
+	l.subscribed(&others[0])
+	if got := passed(); got != "ef" {
+		t.Errorf("%q, want e and f", got)
+	}
+	l.subscribed(&others[2])
+	l.entered(&others[3])
+	l.put(out, from("g"))
+	l.left(&others[3]) // it has given up
+	if got := passed(); got != "g" {
+		t.Errorf("%q, want g", got)
 	}
 }
 

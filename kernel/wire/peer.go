@@ -70,7 +70,7 @@ func (p *peer) Read(b []byte) (int, error) {
 	for len(p.in) == 0 {
 		// zmq4 comes back for more only after it has dealt with what it read before.
 		if p.topic != nil {
-			p.door.subscribed(p, *p.topic, !p.subscribed)
+			p.door.subscribed(p.Conn, *p.topic, !p.subscribed)
 			p.topic, p.subscribed = nil, true
 		}
 		if err := p.next(); err != nil {

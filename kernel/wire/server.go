@@ -78,13 +78,13 @@ func (s *Server) open(ch Channel, l *lobby) error {
 	if err != nil {
 		return err
 	}
-	d.left = func(*peer) {}
+	d.entered, d.left = func(net.Conn) {}, func(net.Conn) {}
 	if ch == IOPub {
-		d.left = l.left
-		d.subscribed = func(p *peer, topic string, first bool) {
+		d.entered, d.left = l.entered, l.left
+		d.subscribed = func(c net.Conn, topic string, first bool) {
 			s.welcome(topic)
 			if first {
-				l.subscribed(p) // after the welcome, so that the client hears that before anything of its request
+				l.subscribed(c) // after the welcome, so that the client hears that before anything of its request
 			}
 		}
 	}
