@@ -127,7 +127,7 @@ func TestClassicPage(t *testing.T) {
 // TestClassicNotTrusted opens a notebook with stored outputs that this user has never run: scripts and SVG are kept
 // off the page there, and the figures show as PNG, in their nominal size.
 func TestClassicNotTrusted(t *testing.T) {
-	ctx := openNotebook(t, "jupyter-notebook", "../../notebooks/hoist-link.ipynb")
+	ctx := openNotebook(t, "jupyter-notebook", worked)
 	do(t, ctx, "wait for the figures", until(`[...document.querySelectorAll('.output_area img')].some(e => e.complete && e.naturalWidth > 0)`))
 	screenshot(t, ctx, "classic-not-trusted")
 	if value[bool](t, ctx, `Jupyter.notebook.trusted`) {
@@ -136,15 +136,7 @@ func TestClassicNotTrusted(t *testing.T) {
 	if n := value[int](t, ctx, `document.querySelectorAll('.output_svg svg').length`); n > 0 {
 		t.Errorf("%d SVG figures in a notebook that is not trusted", n)
 	}
-	scale := value[[]float64](t, ctx, `[...document.querySelectorAll('.output_png img')].map(e => e.naturalWidth / e.getBoundingClientRect().width)`)
-	if len(scale) == 0 {
-		t.Fatal("no figures")
-	}
-	for i, s := range scale {
-		if s < 1.99 || s > 2.01 {
-			t.Errorf("figure %d has %.3g pixels a page pixel, want 2", i, s)
-		}
-	}
+	checkScale(t, value[[]float64](t, ctx, `[...document.querySelectorAll('.output_png img')]`+scale))
 	if n := value[int](t, ctx, `document.querySelectorAll('.output_html table td').length`); n == 0 {
 		t.Error("the cards and tables of the notebook are not on the page")
 	}
