@@ -114,9 +114,9 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 		l.fail(f.Pos(), "in the instance of %s for %s: %v", name, typeList(args), err)
 		return
 	}
-	nest := l.nest
-	l.nest = nil
-	defer func() { l.nest = nest }()
+	nest, results := l.nest, l.results
+	l.nest, l.results = nil, l.fieldTypes(f.Type.Results)
+	defer func() { l.nest, l.results = nest, results }()
 	from, to := whole.Name.Pos(), whole.End()
 	slot := f.Name.Name
 	l.rewrite(f, f.Body)

@@ -140,12 +140,16 @@ func New(opt Options) (*Interpreter, error) {
 func (in *Interpreter) hooks() interp.Exports {
 	return interp.Exports{
 		"linewright/cell/cell": {
-			"Show":     reflect.ValueOf(in.show),
-			"Recover":  reflect.ValueOf(in.recovered),
-			"Go":       reflect.ValueOf(in.start),
-			"Leave":    reflect.ValueOf(in.leave),
-			"Typed":    reflect.ValueOf(in.typed),
-			"TypeName": reflect.ValueOf(in.typeName),
+			"Show":        reflect.ValueOf(in.show),
+			"Recover":     reflect.ValueOf(in.recovered),
+			"Go":          reflect.ValueOf(in.start),
+			"Leave":       reflect.ValueOf(in.leave),
+			"Deferred":    reflect.ValueOf(func() *deferred { return new(deferred) }),
+			"Defer":       reflect.ValueOf(func(d *deferred, f func()) { d.calls = append(d.calls, f) }),
+			"RunDeferred": reflect.ValueOf(runDeferred),
+			"LoopEnded":   reflect.ValueOf(loopEnded),
+			"Typed":       reflect.ValueOf(in.typed),
+			"TypeName":    reflect.ValueOf(in.typeName),
 
 			"Holds":     reflect.ValueOf(in.holds),
 			"Refuse":    reflect.ValueOf(refuse),

@@ -181,8 +181,9 @@ func copyBack(body *ast.BlockStmt, label string, back []ast.Stmt) {
 	})
 }
 
-// rangeStmt gives each turn its own variables, and turns a range over an integer into a counting loop, which it returns.
-func (l *lowering) rangeStmt(n *ast.RangeStmt) ast.Stmt {
+// rangeStmt gives each turn its own variables, and turns a range over an integer into a counting loop, and one over a function
+// into a call, which it returns.
+func (l *lowering) rangeStmt(n *ast.RangeStmt, label string) ast.Stmt {
 	t := l.u.info.TypeOf(n.X)
 	switch u := t.Underlying().(type) {
 	case *types.Basic:
@@ -190,8 +191,7 @@ func (l *lowering) rangeStmt(n *ast.RangeStmt) ast.Stmt {
 			return l.rangeInt(n, t)
 		}
 	case *types.Signature:
-		l.fail(n.Pos(), "cells cannot range over a function yet; call it with a function literal")
-		return nil
+		return l.rangeFunc(n, label)
 	}
 	if n.Tok == token.ASSIGN {
 		l.rangeAssign(n)
@@ -329,6 +329,10 @@ func (l *lowering) ownFrame(n *ast.FuncLit) ast.Expr {
 // label moves the label of a statement that became a block to the statement in it that break means.
 func (l *lowering) label(c *astutil.Cursor, n *ast.LabeledStmt) {
 	block, ok := n.Stmt.(*ast.BlockStmt)
+	if ok && l.ranged[block] {
+		c.Replace(block) // nothing refers to it any more
+		return
+	}
 	if !ok || !l.hoisted[block] {
 		return
 	}

@@ -39,6 +39,8 @@ type lowering struct {
 	funcBody  *ast.BlockStmt                       // body of the function that is being lowered
 	nest      []ast.Node                           // loops and function literals around the node at hand
 	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
+	ranged    map[*ast.BlockStmt]bool              // blocks that were loops over functions
+	results   []types.Type                         // of the function that is being lowered
 	called    map[ast.Expr]bool                    // functions of calls
 	comms     map[ast.Stmt]bool                    // sends and receives of select statements
 	literals  int                                  // function literals so far
@@ -58,7 +60,7 @@ func (in *Interpreter) lower(u *unit) (*program, error) {
 			serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, methods: map[types.Object]string{}, marks: map[string]bool{},
 			used: map[string]bool{}, instances: map[types.Object][]*instance{}, named: map[string]types.Type{},
 		},
-		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, synthetic: map[*ast.CallExpr]bool{},
+		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, ranged: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, synthetic: map[*ast.CallExpr]bool{},
 		typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{},
 	}
 	pos := u.src.fn.Body.Lbrace
@@ -166,7 +168,9 @@ func (l *lowering) function(d *ast.FuncDecl) {
 			d = l.method(d, fn)
 		}
 	}
+	l.results = l.fieldTypes(d.Type.Results)
 	l.rewrite(d, d.Body)
+	l.results = nil
 	l.zeroResults(d.Type, d.Body)
 	l.mark(name, kernel+"at_"+strings.ReplaceAll(name, ".", "_"), from, to, d.Body)
 	l.p.funcs = append(l.p.funcs, d)

@@ -28,6 +28,8 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 	case *ast.CallExpr:
 		l.called[ast.Unparen(n.Fun)] = true
 		l.findTyped(n)
+	case *ast.DeferStmt:
+		l.noRecover(n.Call)
 	case *ast.CommClause:
 		l.comms[n.Comm] = true
 	case *ast.MapType:
@@ -50,7 +52,7 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		}
 	}
 	if tv, ok := l.u.info.Types[x]; ok && tv.IsType() {
-		if _, ok := ofCells(tv.Type); ok {
+		if _, ok := ofCells(tv.Type); ok || isSequence(tv.Type) {
 			l.replace(c, l.typeExpr(tv.Type, x.Pos()))
 			return false
 		}
@@ -87,6 +89,12 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		}
 	}
 	return true
+}
+
+// isSequence reports whether a type is iter.Seq or iter.Seq2, which to the interpreter are function types like others.
+func isSequence(t types.Type) bool {
+	n, ok := t.(*types.Named)
+	return ok && n.Obj().Pkg() != nil && n.Obj().Pkg().Path() == "iter"
 }
 
 // replace replaces an expression by one that takes over its type, since what lies around it is lowered later.
@@ -178,7 +186,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		l.forStmt(n, labelOf(c))
 		l.head(c, n, n.Init)
 	case *ast.RangeStmt:
-		if s := l.rangeStmt(n); s != nil {
+		if s := l.rangeStmt(n, labelOf(c)); s != nil {
 			c.Replace(s)
 		}
 	case *ast.TypeSwitchStmt:

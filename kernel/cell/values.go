@@ -196,6 +196,9 @@ func (l *lowering) typeExpr(t types.Type, pos token.Pos) ast.Expr {
 func (l *lowering) namedType(t *types.Named, pos token.Pos) ast.Expr {
 	o := t.Obj()
 	var x ast.Expr
+	if isSequence(t) {
+		return l.typeExpr(t.Underlying(), pos)
+	}
 	if _, ok := ofCells(t); ok {
 		return &ast.Ident{Name: l.typeInstance(t, pos).slot, NamePos: pos}
 	}

@@ -19,6 +19,7 @@ import (
 	"os/exec"
 	"path"
 	"path/filepath"
+	"slices"
 	"sort"
 	"strings"
 
@@ -68,6 +69,9 @@ var unserved = []string{
 	"net/rpc", "os/signal", "runtime/pprof", "runtime/trace", "testing", "database/sql", "crypto/dsa", "crypto/tls", "crypto/x509",
 }
 
+// later are standard packages that yaegi's table does not know.
+var later = []string{"iter"}
+
 func main() {
 	if err := run(os.Args[1:]); err != nil {
 		fmt.Fprintln(os.Stderr, "gen:", err)
@@ -84,7 +88,11 @@ func run(args []string) error {
 		if err := extract("gonum_org-*.go", gonum); err != nil {
 			return err
 		}
-		return export("exports/std.zip", append(standard(), gonum...))
+		std, err := export("exports/std.zip", append(standard(), gonum...))
+		if err != nil {
+			return err
+		}
+		return newer("symbols/newer.go", std)
 	case "own":
 		own, err := ownPackages()
 		if err != nil {
@@ -93,14 +101,15 @@ func run(args []string) error {
 		if err := extract("linewright-*.go", own); err != nil {
 			return err
 		}
-		return export("exports/own.zip", own)
+		_, err = export("exports/own.zip", own)
+		return err
 	}
 	return fmt.Errorf("unknown part %q; want std or own", args[0])
 }
 
 // standard returns the import paths of the standard packages that yaegi has symbols for.
 func standard() []string {
-	var paths []string
+	paths := slices.Clone(later)
 next:
 	for key := range stdlib.Symbols {
 		p := path.Dir(key)
@@ -155,77 +164,79 @@ type listed struct {
 }
 
 // export writes one archive with, for each package, its export data without positions (NAME.x) and its doc comments
-// (NAME.json).
-func export(file string, paths []string) error {
+// (NAME.json). It returns the packages.
+func export(file string, paths []string) ([]*types.Package, error) {
 	out, err := goTool(append([]string{"list", "-export", "-json=ImportPath,Export,Dir,GoFiles"}, paths...)...)
 	if err != nil {
-		return err
+		return nil, err
 	}
 	var packages []listed
 	for dec := json.NewDecoder(bytes.NewReader(out)); dec.More(); {
 		var p listed
 		if err := dec.Decode(&p); err != nil {
-			return err
+			return nil, err
 		}
 		packages = append(packages, p)
 	}
 	sort.Slice(packages, func(i, j int) bool { return packages[i].ImportPath < packages[j].ImportPath })
 
+	var read []*types.Package
 	var archive bytes.Buffer
 	zw := zip.NewWriter(&archive)
 	for _, p := range packages {
-		types, err := exportData(p)
+		pkg, data, err := exportData(p)
 		if err != nil {
-			return err
+			return nil, err
 		}
+		read = append(read, pkg)
 		docs, err := godoc.Read(p.Dir, p.ImportPath, p.GoFiles)
 		if err != nil {
-			return err
+			return nil, err
 		}
 		text, err := json.Marshal(docs)
 		if err != nil {
-			return err
+			return nil, err
 		}
 		for _, f := range []struct {
 			name string
 			data []byte
-		}{{p.ImportPath + ".x", types}, {p.ImportPath + ".json", text}} {
+		}{{p.ImportPath + ".x", data}, {p.ImportPath + ".json", text}} {
 			w, err := zw.Create(f.name)
 			if err != nil {
-				return err
+				return nil, err
 			}
 			if _, err := w.Write(f.data); err != nil {
-				return err
+				return nil, err
 			}
 		}
 	}
 	if err := zw.Close(); err != nil {
-		return err
+		return nil, err
 	}
-	return os.WriteFile(file, archive.Bytes(), 0o644)
+	return read, os.WriteFile(file, archive.Bytes(), 0o644)
 }
 
-func exportData(p listed) ([]byte, error) {
+func exportData(p listed) (*types.Package, []byte, error) {
 	f, err := os.Open(p.Export)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	defer f.Close()
 	//lint:ignore SA1019 the build cache holds archives until Go 1.29
 	r, err := gcexportdata.NewReader(f)
 	if err != nil {
-		return nil, fmt.Errorf("%s: %w", p.ImportPath, err)
+		return nil, nil, fmt.Errorf("%s: %w", p.ImportPath, err)
 	}
 	pkg, err := gcexportdata.Read(r, token.NewFileSet(), map[string]*types.Package{}, p.ImportPath)
 	if err != nil {
-		return nil, fmt.Errorf("%s: %w", p.ImportPath, err)
+		return nil, nil, fmt.Errorf("%s: %w", p.ImportPath, err)
 	}
 	var out bytes.Buffer
 	// Without a file set no positions are written: they would name this machine's folders and change with every line.
 	if err := gcexportdata.Write(&out, nil, pkg); err != nil {
-		return nil, fmt.Errorf("%s: %w", p.ImportPath, err)
+		return nil, nil, fmt.Errorf("%s: %w", p.ImportPath, err)
 	}
-	return out.Bytes(), nil
+	return pkg, out.Bytes(), nil
 }
 
 func goTool(args ...string) ([]byte, error) {
