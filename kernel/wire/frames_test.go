@@ -3,8 +3,13 @@ package wire
 import (
 	"bytes"
 	"context"
+	"crypto/hmac"
+	"crypto/sha256"
+	"encoding/hex"
 	"io"
 	"net"
+	"os"
+	"path/filepath"
 	"strings"
 	"sync"
 	"testing"
@@ -230,6 +235,59 @@ func FuzzDecode(f *testing.F) {
 			if err == nil && (m.ID == "" || m.Type == "" || len(m.Identities) < routed) {
 				t.Errorf("accepted %q", all)
 			}
+		}
+	})
+}
+
+// What is accepted has the signature that RFC 2104 gives its four frames, and is accepted once.
+func FuzzVerify(f *testing.F) {
+	good := func(frames ...string) []byte {
+		mac := hmac.New(sha256.New, []byte(testKey))
+		for _, s := range frames {
+			mac.Write([]byte(s))
+		}
+		return hex.AppendEncode(nil, mac.Sum(nil))
+	}
+	f.Add(good("{}", "{}", "{}", "{}"), "{}", "{}", "{}", "{}")
+	f.Add(bytes.ToUpper(good(`{"msg_id":"1"}`, "", "{}", "[]")), `{"msg_id":"1"}`, "", "{}", "[]")
+	f.Add([]byte(strings.Repeat("0", 64)), "", "", "", "")
+	f.Add([]byte{}, "a", "b", "c", "d")
+	f.Fuzz(func(t *testing.T, signature []byte, header, parent, metadata, content string) {
+		s := signer{key: []byte(testKey)}
+		frames := [][]byte{[]byte(header), []byte(parent), []byte(metadata), []byte(content)}
+		err := s.verify(signature, frames)
+		if right := bytes.EqualFold(signature, good(header, parent, metadata, content)); right != (err == nil) {
+			t.Errorf("signature %q: right %t, error %v", signature, right, err)
+		}
+		if err == nil && s.verify(signature, frames) != errReplay {
+			t.Error("accepted twice")
+		}
+	})
+}
+
+// No connection file makes the reader panic, and one that is accepted can be listened on.
+func FuzzReadConnection(f *testing.F) {
+	const good = `{"shell_port":1001,"iopub_port":1002,"stdin_port":1003,"control_port":1004,"hb_port":1005,"ip":"127.0.0.1","key":"k","transport":"tcp","signature_scheme":"hmac-sha256"}`
+	f.Add([]byte(good))
+	f.Add([]byte(strings.Replace(good, "1004", "1004e0", 1)))
+	f.Add([]byte(strings.Replace(good, `"tcp"`, `"ipc"`, 1)))
+	f.Add([]byte(`{"ip":null,"shell_port":null}`))
+	path := filepath.Join(f.TempDir(), "kernel.json")
+	f.Fuzz(func(t *testing.T, text []byte) {
+		if err := os.WriteFile(path, text, 0o600); err != nil {
+			t.Fatal(err)
+		}
+		c, err := ReadConnection(path)
+		if err != nil {
+			return
+		}
+		addresses := map[string]bool{}
+		for _, ch := range channels {
+			network, address := c.address(ch)
+			addresses[network+" "+address] = true
+		}
+		if len(addresses) != len(channels) || c.IP == "" || c.Transport != "tcp" && c.Transport != "ipc" {
+			t.Errorf("accepted: %+v", c)
 		}
 	})
 }
