@@ -134,24 +134,32 @@ func (a fraction) compare(b fraction) int {
 	return cmp.Or(cmp.Compare(ah, bh), cmp.Compare(al, bl))
 }
 
-// frequency is the frequency of tone k of a comb in Hz; it rounds once where k times the symbol rate is exact.
+// frequency is k/period symbol rates in Hz, the quotient of the exact product, rounded once: the one frequency of a
+// tone, however far its fraction is reduced, and for whole, half and quarter symbol rates what multiplying by these gives.
 func (p *PSD) frequency(k, period uint64) float64 {
-	return float64(k) * p.drive.SymbolRate / float64(period)
+	n, d, rate := float64(k), float64(period), p.drive.SymbolRate
+	product := n * rate
+	q := product / d
+	missing := math.FMA(-q, d, product) + math.FMA(n, rate, -product)
+	return q + missing/d
+}
+
+// from is the first tone of a comb with f <= frequency.
+func (p *PSD) from(c *comb, f float64) int {
+	k := int(math.Max(0, math.Floor(f/p.drive.SymbolRate*float64(c.period))-1))
+	for p.frequency(uint64(k), uint64(c.period)) < f {
+		k++
+	}
+	return k
 }
 
 // each calls f for every tone of a comb with lo <= frequency < hi, in rising order: those that are absent too.
 func (p *PSD) each(ctx context.Context, c *comb, lo, hi float64, f func(k int, power float64)) {
-	first := int(math.Max(0, math.Floor(lo/p.drive.SymbolRate*float64(c.period))-1))
-	for k := first; ; k++ {
+	for k, end := p.from(c, lo), p.from(c, hi); k < end; k++ {
 		if k%1024 == 0 {
 			stop(ctx)
 		}
-		switch at := p.frequency(uint64(k), uint64(c.period)); {
-		case at >= hi:
-			return
-		case at >= lo:
-			f(k, p.tone(c, k))
-		}
+		f(k, p.tone(c, k))
 	}
 }
 
