@@ -13,7 +13,7 @@ import (
 )
 
 // packages are Debian's names of everything that these tests drive.
-const packages = "apt-get install -y --no-install-recommends jupyter-notebook python3-nbclassic jupyter-console " +
+const packages = "apt-get install -y --no-install-recommends jupyter-notebook python3-nbclassic jupyter-console jupyter-qtconsole xvfb " +
 	"jupyter-nbconvert pandoc poppler-utils python3-nbclient python3-nbformat python3-jupyter-kernel-test chromium tmux procps"
 
 // python is Debian's own: another python3 may come first on PATH and lacks the packages.
