@@ -15,8 +15,8 @@
 //
 // # Output
 //
-// Text of a cell is collected and sent after 50 ms, or at 64 kB, and before anything else of the same cell is sent; a
-// character is never cut. Each cell has an output of its own, which carries the request that started it, so goroutines
+// Text of a cell is collected and sent after 50 ms, or at 64 kB (512 kB where much comes fast), and before anything else
+// of the same cell is sent; a character is never cut. Each cell has an output of its own, which carries the request that started it, so goroutines
 // that outlive their cell go on writing under it. What is written to the standard output and error of the process
 // (os.Stdout, package log, compiled code) belongs to the cell that runs or ran last.
 //

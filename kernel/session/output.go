@@ -15,7 +15,8 @@ import (
 
 const (
 	collectFor  = 50 * time.Millisecond // how long text waits for more
-	collectSize = 64 << 10              // bytes at which it does not
+	collectSize = 64 << 10              // bytes at which it does not, at first
+	collectMost = 512 << 10             // and where much follows: each message costs a front end more than its bytes do
 )
 
 // textLimit is how many bytes of text one cell may send to the front ends. All of it is in a file when there is more.
@@ -31,6 +32,7 @@ type output struct {
 	mu     sync.Mutex
 	text   [2][]byte   // of stdout and stderr, not sent yet; guarded by mu
 	timer  *time.Timer // runs while text waits, else nil; guarded by mu
+	step   int         // bytes at which text does not wait; guarded by mu
 	taken  int         // bytes of text so far, sent or not; guarded by mu
 	record record      // guarded by mu
 }
@@ -40,7 +42,7 @@ var _ cell.Output = (*output)(nil)
 var streams = [2]string{"stdout", "stderr"}
 
 func newOutput(k *kernel, ctx context.Context, request *wire.Message, allowStdin bool) *output {
-	return &output{k: k, ctx: ctx, request: request, allowStdin: allowStdin}
+	return &output{k: k, ctx: ctx, request: request, allowStdin: allowStdin, step: collectSize}
 }
 
 // Stream takes text of the interpreter. What compiled code wrote to the same descriptor before it comes first.
@@ -63,13 +65,15 @@ func (o *output) write(which int, p []byte) {
 	p = o.admit(p)
 	o.text[which] = append(o.text[which], p...)
 	switch {
-	case len(o.text[which]) >= collectSize:
+	case len(o.text[which]) >= o.step:
 		o.flush(false)
+		o.step = min(2*o.step, collectMost)
 	case o.timer == nil && len(p) > 0:
 		o.timer = time.AfterFunc(collectFor, func() {
 			o.mu.Lock()
 			defer o.mu.Unlock()
 			o.flush(false)
+			o.step = collectSize
 		})
 	}
 }
@@ -117,7 +121,7 @@ func (o *output) flushOne(which int, whole bool) {
 	content = append(content, `","text":`...)
 	content = append(appendText(content, text[:n]), '}')
 	rest := text[n:]
-	if cap(text) > 2*collectSize {
+	if cap(text) > 2*collectMost {
 		text = nil // a large buffer is not kept for what may be little
 	}
 	o.text[which] = append(text[:0], rest...)
