@@ -68,6 +68,7 @@ type Interpreter struct {
 	instances map[types.Object][]*instance  // of generic functions and types
 	typeTable []types.Type                  // what the calls of typed in lowered code refer to
 	typeIDs   typeutil.Map
+	pairs     map[pairKey]any // see pairOf
 	gens      generations
 	runs      int               // serial number of the last cell
 	aliases   map[string]string // package path -> name under which the interpreter imports it
@@ -152,6 +153,8 @@ func (in *Interpreter) hooks() interp.Exports {
 			"TypeName":    reflect.ValueOf(in.typeName),
 
 			"Holds":     reflect.ValueOf(in.holds),
+			"Pair":      reflect.ValueOf(in.pairOf),
+			"Bare":      reflect.ValueOf(bare),
 			"Refuse":    reflect.ValueOf(refuse),
 			"NotA":      reflect.ValueOf(notA),
 			"Equal":     reflect.ValueOf(in.equal),

@@ -43,6 +43,7 @@ type lowering struct {
 	results   []types.Type                         // of the function that is being lowered
 	called    map[ast.Expr]bool                    // functions of calls
 	comms     map[ast.Stmt]bool                    // sends and receives of select statements
+	returns   map[*ast.ReturnStmt][]types.Type     // what returns give their values to
 	literals  int                                  // function literals so far
 	temps     int                                  // variables made so far
 	typed     map[*ast.CallExpr]map[int]types.Type // arguments whose static type goes with them
@@ -60,7 +61,7 @@ func (in *Interpreter) lower(u *unit) (*program, error) {
 			serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, methods: map[types.Object]string{}, marks: map[string]bool{},
 			used: map[string]bool{}, instances: map[types.Object][]*instance{}, named: map[string]types.Type{},
 		},
-		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, ranged: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, synthetic: map[*ast.CallExpr]bool{},
+		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, ranged: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, returns: map[*ast.ReturnStmt][]types.Type{}, synthetic: map[*ast.CallExpr]bool{},
 		typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{},
 	}
 	pos := u.src.fn.Body.Lbrace
@@ -271,6 +272,15 @@ func (l *lowering) statement(s ast.Stmt) []ast.Stmt {
 
 // hook is a call of this package from a lowered cell.
 func (l *lowering) hook(name string, pos token.Pos, args ...ast.Expr) *ast.CallExpr {
+	for i, x := range args {
+		if call, ok := x.(*ast.CallExpr); ok && !l.synthetic[call] {
+			if t := l.u.info.TypeOf(x); t != nil && isAny(t) {
+				// In parentheses, since the interpreter takes the values out of pairs that a call gives straight to
+				// compiled code.
+				args[i] = &ast.ParenExpr{Lparen: x.Pos(), X: x, Rparen: x.End()}
+			}
+		}
+	}
 	call := &ast.CallExpr{
 		Fun:    &ast.SelectorExpr{X: &ast.Ident{Name: kernel, NamePos: pos}, Sel: &ast.Ident{Name: name, NamePos: pos}},
 		Lparen: pos, Args: args, Rparen: pos,

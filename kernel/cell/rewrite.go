@@ -23,7 +23,12 @@ func (l *lowering) rewrite(n ast.Node, body *ast.BlockStmt) {
 // before folds constants and renames packages, from the outside in.
 func (l *lowering) before(c *astutil.Cursor) bool {
 	switch n := c.Node().(type) {
-	case *ast.ForStmt, *ast.RangeStmt, *ast.FuncLit:
+	case *ast.FuncLit:
+		l.nest = append(l.nest, n)
+		l.findReturns(n.Type, n.Body)
+	case *ast.FuncDecl:
+		l.findReturns(n.Type, n.Body)
+	case *ast.ForStmt, *ast.RangeStmt:
 		l.nest = append(l.nest, n)
 	case *ast.CallExpr:
 		l.called[ast.Unparen(n.Fun)] = true
@@ -170,6 +175,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 			l.replace(c, x)
 			break
 		}
+		l.arguments(n)
 		l.methodCall(n)
 	case *ast.FuncLit:
 		l.zeroResults(n.Type, n.Body)
@@ -200,7 +206,12 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.CommClause:
 		l.commClause(n)
 	case *ast.AssignStmt:
+		l.assigned(n)
 		l.parallel(c, n)
+	case *ast.ValueSpec:
+		l.declared(n)
+	case *ast.ReturnStmt:
+		l.returnStmt(n)
 	case *ast.LabeledStmt:
 		l.label(c, n)
 	}
@@ -210,8 +221,8 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 // convertToAny makes the conversion of a paired type to any one by a function: by itself it loses the type.
 func (l *lowering) convertToAny(n *ast.CallExpr, to types.Type) {
 	from := l.u.info.TypeOf(n.Args[0])
-	if i, ok := to.Underlying().(*types.Interface); ok && i.Empty() && from != nil && paired(from) {
-		n.Fun = &ast.Ident{Name: asAny, NamePos: n.Pos()}
+	if from != nil && isAny(to) && paired(from) {
+		*n = *l.pair(n.Args[0], from).(*ast.CallExpr)
 	}
 }
 
