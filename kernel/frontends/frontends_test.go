@@ -40,7 +40,12 @@ func needModule(t *testing.T, module string) {
 
 func missing(t *testing.T, what string) {
 	t.Helper()
-	text := fmt.Sprintf("%s is not installed; on Debian: %s", what, packages)
+	absent(t, fmt.Sprintf("%s is not installed; on Debian: %s", what, packages))
+}
+
+// absent skips the test, or fails it where front ends are required.
+func absent(t *testing.T, text string) {
+	t.Helper()
 	if os.Getenv("LINEWRIGHT_FRONTENDS") == "require" {
 		t.Fatal(text)
 	}
