@@ -180,7 +180,7 @@ func (p *probe) packageMembers(pkg *types.Package) []candidate {
 		if !o.Exported() || pkg.Path() == pagePath && (name == "Host" || name == "Attach") {
 			continue
 		}
-		if _, constant := o.(*types.Const); !constant && !p.in.vm.has(pkg.Path(), name) {
+		if _, constant := o.(*types.Const); !constant && !p.in.vm.has(pkg.Path(), name) && p.in.genericFunc(o) == nil {
 			continue
 		}
 		list = append(list, describe(o, nearField))

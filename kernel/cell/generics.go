@@ -60,12 +60,20 @@ func (l *lowering) funcInstance(fn *types.Func, args []types.Type, pos token.Pos
 	}
 	t := *f.Type
 	t.TypeParams = nil
-	l.concrete(&ast.FuncDecl{Name: &ast.Ident{Name: i.slot, NamePos: f.Name.Pos()}, Type: &t, Body: f.Body}, names, args, fn.Name(), f)
+	l.concrete(&ast.FuncDecl{Name: &ast.Ident{Name: i.slot, NamePos: f.Name.Pos()}, Type: &t, Body: f.Body}, names, args, fn.Name(), f, l.in.generic(fn.Pkg()))
 	return i.slot
 }
 
 // source parses the declaration of a generic object anew.
 func (l *lowering) source(o types.Object, key string, pos token.Pos) *decl {
+	if g := l.in.generic(o.Pkg()); g != nil {
+		again := *g.decls[key]
+		if err := again.parse(l.in.fset); err != nil {
+			l.fail(pos, "%v", err)
+			return nil
+		}
+		return &again
+	}
 	d := l.u.texts[key]
 	if l.u.objects[key] != o {
 		d = nil
@@ -85,16 +93,24 @@ func (l *lowering) source(o types.Object, key string, pos token.Pos) *decl {
 	return &again
 }
 
-// concrete checks a function, whose type parameters are names of the given types, and lowers it.
-func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, name string, whole *ast.FuncDecl) {
+// concrete checks a function, whose type parameters are names of the given types, and lowers it. Home is the package that it
+// belongs to, nil for the cells.
+func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, name string, whole *ast.FuncDecl, home *genericPackage) {
 	without := map[string]bool{}
-	for n := range l.u.objects {
-		without[n] = true
+	if home == nil {
+		for n := range l.u.objects {
+			without[n] = true
+		}
 	}
 	for _, n := range names {
 		without[n] = true
 	}
-	p := l.in.scope(without, l.u.imports)
+	var p *types.Package
+	if home == nil {
+		p = l.in.scope(without, l.u.imports)
+	} else {
+		p = home.scope(without)
+	}
 	for i, n := range names {
 		if n != "_" {
 			o := types.NewTypeName(f.Pos(), p, n, args[i])
@@ -103,13 +119,17 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 		}
 	}
 	for _, n := range sorted(l.u.objects) {
-		if !slices.Contains(names, n) && p.Scope().Lookup(n) == nil && !strings.Contains(n, ".") {
+		if home == nil && !slices.Contains(names, n) && p.Scope().Lookup(n) == nil && !strings.Contains(n, ".") {
 			p.Scope().Insert(l.u.objects[n])
 		}
 	}
 	l.u.concrete = true
+	imports := l.u.imports
+	if home != nil {
+		l.u.imports = home.imports
+	}
 	err := l.in.pass(l.u, p, []ast.Decl{f}, nil)
-	l.u.concrete = false
+	l.u.concrete, l.u.imports = false, imports
 	if err != nil {
 		l.fail(f.Pos(), "in the instance of %s for %s: %v", name, typeList(args), err)
 		return
@@ -122,7 +142,9 @@ func (l *lowering) concrete(f *ast.FuncDecl, names []string, args []types.Type, 
 	l.rewrite(f, f.Body)
 	l.zeroResults(f.Type, f.Body)
 	f.Name.Name = slot
-	l.mark(name, kernel+"at_"+slot, from, to, f.Body)
+	if home == nil {
+		l.mark(name, kernel+"at_"+slot, from, to, f.Body)
+	}
 	l.p.funcs = append(l.p.funcs, f)
 }
 
@@ -167,7 +189,7 @@ func (l *lowering) typeInstance(t *types.Named, pos token.Pos) *instance {
 			continue
 		}
 		f := d.node.(*ast.FuncDecl)
-		l.concrete(l.method(f, m), receiverParams(f), args, key, f)
+		l.concrete(l.method(f, m), receiverParams(f), args, key, f, nil)
 	}
 	return i
 }
@@ -234,7 +256,11 @@ func (l *lowering) methodSlot(fn *types.Func) string {
 
 // instantiate replaces a use of a generic function by its instance.
 func (l *lowering) instantiate(x ast.Expr) ast.Expr {
-	id, ok := ast.Unparen(x).(*ast.Ident)
+	x = ast.Unparen(x)
+	id, ok := x.(*ast.Ident)
+	if s, is := x.(*ast.SelectorExpr); is {
+		id, ok = s.Sel, true
+	}
 	if !ok {
 		return nil
 	}
@@ -242,8 +268,8 @@ func (l *lowering) instantiate(x ast.Expr) ast.Expr {
 	if !ok {
 		return nil
 	}
-	fn, ok := l.u.info.Uses[id].(*types.Func)
-	if !ok || fn.Pkg() == nil || fn.Pkg().Path() != "main" {
+	fn := l.in.genericFunc(l.u.info.Uses[id])
+	if fn == nil {
 		return nil
 	}
 	return &ast.Ident{Name: l.funcInstance(fn, list(inst.TypeArgs), id.Pos()), NamePos: id.Pos()}

@@ -14,7 +14,7 @@ import (
 
 // hint returns a finding's message with what may have been meant by a name that is not there.
 func (in *Interpreter) hint(u *unit, p *types.Package, decls []ast.Decl, e types.Error) string {
-	msg := strings.Replace(e.Msg, " in argument to "+valuesName, "", 1) // of a last line of several values
+	msg := lastLine.Replace(e.Msg)
 	if name, ok := strings.CutPrefix(msg, "undefined: "); ok {
 		name, _, _ = strings.Cut(name, " (but have ")
 		if base, member, ok := strings.Cut(name, "."); ok {
@@ -54,6 +54,9 @@ func (in *Interpreter) hint(u *unit, p *types.Package, decls []ast.Decl, e types
 	}
 	return msg
 }
+
+// lastLine takes the function out that a last line of several values is to the checker.
+var lastLine = strings.NewReplacer(" in argument to "+valuesName, "", "in call to "+valuesName+", ", "", " (declared at -)", "")
 
 func (in *Interpreter) undefinedMember(u *unit, msg, base, member string) string {
 	pkg, err := in.lib.Import(in.packageNamed(u.imports, base))

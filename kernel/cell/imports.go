@@ -35,7 +35,7 @@ type library struct {
 }
 
 func newLibrary() (*library, error) {
-	l := &library{files: map[string]*zip.File{}, loaded: map[string]*types.Package{"unsafe": types.Unsafe}, docs: map[string]godoc.Table{}, own: map[string]string{}}
+	l := &library{files: map[string]*zip.File{}, loaded: map[string]*types.Package{"unsafe": types.Unsafe, compiledPath: compiledPackage()}, docs: map[string]godoc.Table{}, own: map[string]string{}}
 	for _, data := range [][]byte{stdZip, ownZip} {
 		r, err := zip.NewReader(bytes.NewReader(data), int64(len(data)))
 		if err != nil {

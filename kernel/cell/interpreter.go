@@ -66,6 +66,7 @@ type Interpreter struct {
 	named     map[string]types.Type         // the interpreter's name of a type -> the type
 	pkg       *types.Package                // of the cells' variables; see check
 	instances map[types.Object][]*instance  // of generic functions and types
+	generics  map[string]*genericPackage    // path -> source of a standard package's generic code
 	typeTable []types.Type                  // what the calls of typed in lowered code refer to
 	typeIDs   typeutil.Map
 	pairs     map[pairKey]any // see pairOf
@@ -106,7 +107,7 @@ func New(opt Options) (*Interpreter, error) {
 		opt: opt, lib: lib,
 		pkg:   types.NewPackage("main", "main"),
 		names: map[string]*entry{}, imports: map[string]string{}, preloaded: map[string]string{"fmt": "fmt", "math": "math"},
-		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]types.Type{}, instances: map[types.Object][]*instance{}, gens: generations{},
+		slots: map[types.Object]string{}, phantoms: map[*types.Func]bool{}, methods: map[types.Object]string{}, texts: map[*types.Func]reflect.Value{}, named: map[string]types.Type{}, instances: map[types.Object][]*instance{}, generics: map[string]*genericPackage{}, gens: generations{},
 		aliases: map[string]string{}, aliasPath: map[string]string{}, imported: map[string]bool{},
 		marked:     map[string]bool{},
 		tracks:     tracks{cells: map[int][]*function{}, marks: map[string]*int{}},
@@ -116,7 +117,7 @@ func New(opt Options) (*Interpreter, error) {
 	for name, path := range lib.own {
 		in.preloaded[name] = path
 	}
-	in.vm, err = newMachine(stream{in, "stdout"}, traceWriter{in}, in.hooks(), in.replacements())
+	in.vm, err = newMachine(stream{in, "stdout"}, traceWriter{in}, in.hooks(), in.replacements(), compiledSymbols)
 	if err != nil {
 		return nil, err
 	}

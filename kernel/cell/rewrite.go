@@ -88,6 +88,10 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 	if s, ok := x.(*ast.SelectorExpr); ok {
 		if id, ok := s.X.(*ast.Ident); ok {
 			if p, ok := l.u.info.Uses[id].(*types.PkgName); ok {
+				if f := l.instantiate(s); f != nil {
+					l.replace(c, f)
+					return false
+				}
 				l.selector(s, id, p.Imported())
 				return false
 			}
@@ -124,11 +128,7 @@ func (l *lowering) inLoop() bool {
 // selector lowers a name of a package.
 func (l *lowering) selector(s *ast.SelectorExpr, id *ast.Ident, p *types.Package) {
 	if !l.in.vm.has(p.Path(), s.Sel.Name) {
-		why := "the interpreter's tables end before it"
-		if o := p.Scope().Lookup(s.Sel.Name); o != nil && isGeneric(o) {
-			why = "cells can use generic code of their own, not yet that of packages"
-		}
-		l.fail(s.Pos(), "%s.%s is not available: %s", p.Name(), s.Sel.Name, why)
+		l.fail(s.Pos(), "%s", missing(p, s.Sel.Name))
 		return
 	}
 	id.Name = l.alias(p)

@@ -25,14 +25,6 @@ var frameLine = regexp.MustCompile(`^cell\[(\d+)\]/_\.go:(\d+):(\d+): panic: `)
 type traceWriter struct{ in *Interpreter }
 
 func (t traceWriter) Write(p []byte) (int, error) {
-	m := frameLine.FindSubmatch(p)
-	if m == nil {
-		return len(p), nil
-	}
-	var at [3]int
-	for i := range at {
-		at[i], _ = strconv.Atoi(string(m[i+1])) // digits, by the expression
-	}
 	s := &t.in.traces
 	g := goroutine()
 	first := firstFrame()
@@ -40,6 +32,14 @@ func (t traceWriter) Write(p []byte) (int, error) {
 	defer s.mu.Unlock()
 	if first {
 		s.of[g] = nil
+	}
+	m := frameLine.FindSubmatch(p)
+	if m == nil {
+		return len(p), nil
+	}
+	var at [3]int
+	for i := range at {
+		at[i], _ = strconv.Atoi(string(m[i+1])) // digits, by the expression
 	}
 	if len(s.of[g]) < traceDepth {
 		s.of[g] = append(s.of[g], place64(at[0], at[1], at[2]))
