@@ -6,7 +6,6 @@ import (
 
 	"linewright/builtins/internal/markov"
 	"linewright/builtins/page"
-	"linewright/builtins/source"
 )
 
 // A Chain is a Markov chain that emits symbols: the joint machine of an encoder and the model of its data, or one
@@ -52,10 +51,7 @@ func (c *Code) Chain() *Chain {
 // join makes the joint chain, of no more than about limit edges.
 func (c *Code) join(ctx context.Context, limit int) (*Chain, error) {
 	m, data := c.machine, c.data
-	chain := &Chain{Name: c.name}
-	if data.String() != source.Random().String() {
-		chain.Name += ", " + data.String()
-	}
+	chain := &Chain{Name: c.Label()}
 	type pair struct{ state, data int }
 	number := make(map[pair]int)
 	var pairs []pair

@@ -25,6 +25,14 @@ func (c *Code) Name() string { return c.name }
 // String returns the code's name.
 func (c *Code) String() string { return c.name }
 
+// Label returns the code's name and, unless they are equiprobable bits, its data.
+func (c *Code) Label() string {
+	if c.data.String() == source.Random().String() {
+		return c.name
+	}
+	return c.name + ", " + c.data.String()
+}
+
 // Reference returns the standard or paper that defines a code of the catalogue, with the convention taken where they
 // leave one open; "" for a scripted code.
 func (c *Code) Reference() string { return c.reference }

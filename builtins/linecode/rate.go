@@ -88,6 +88,10 @@ func (c *Code) Rate() float64 {
 
 func (c *Code) meanRate() (float64, error) {
 	ctx := page.Context()
+	if c.data.Pattern() != nil {
+		_, laps, symbols, err := c.cycle(ctx)
+		return float64(laps*c.lapWords()*c.machine.bits) / float64(symbols), err
+	}
 	chain := c.Chain()
 	g := chain.graph()
 	symbols := make([]float64, chain.States) // mean per step from each state

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"slices"
 
 	"linewright/builtins/page"
 )
@@ -17,6 +18,8 @@ type Model struct {
 	initial []float64
 	one     []float64 // P(1) in each state
 	next    [][2]int  // the state after a 0 and after a 1
+
+	pattern []byte // instead of the tables, for data that repeat: the state is the place in it
 }
 
 // Random returns the model of independent, equiprobable bits.
@@ -52,17 +55,14 @@ func Repeating(bits []byte) Model {
 	if n == 0 {
 		panic(fmt.Errorf("source: Repeating got no bits; give at least one"))
 	}
-	m := Model{name: fmt.Sprintf("repeating %d bits", n), initial: make([]float64, n), one: make([]float64, n), next: make([][2]int, n)}
-	if n == 1 {
-		m.name = fmt.Sprintf("all %ds", bits[0])
-	}
-	m.initial[0] = 1
 	for i, b := range bits {
 		if b > 1 {
 			panic(fmt.Errorf("source: Repeating got %d at position %d; a bit is 0 or 1, one a byte", b, i))
 		}
-		m.one[i] = float64(b)
-		m.next[i] = [2]int{(i + 1) % n, (i + 1) % n}
+	}
+	m := Model{name: fmt.Sprintf("repeating %d bits", n), pattern: slices.Clone(bits)}
+	if n == 1 {
+		m.name = fmt.Sprintf("all %ds", bits[0])
 	}
 	return m
 }
@@ -73,36 +73,47 @@ func mustBeProbability(function, name string, p float64) {
 	}
 }
 
+// Pattern returns the bits of [Repeating], one a byte; nil for other data. The slice is shared: read only.
+func (m Model) Pattern() []byte { return m.pattern }
+
 // States returns the number of states of the model.
-func (m Model) States() int { return max(1, len(m.one)) }
+func (m Model) States() int { return max(1, len(m.one), len(m.pattern)) }
 
 // Initial returns the probability of starting in each state. The slice is a copy.
 func (m Model) Initial() []float64 {
-	if m.one == nil {
-		return []float64{1}
+	if m.one != nil {
+		return slices.Clone(m.initial)
 	}
-	return append([]float64(nil), m.initial...)
+	first := make([]float64, m.States())
+	first[0] = 1
+	return first
 }
 
 // One returns the probability that the bit drawn in the given state is a 1.
 func (m Model) One(state int) float64 {
-	if m.one == nil {
-		return 0.5
+	switch {
+	case m.pattern != nil:
+		return float64(m.pattern[state])
+	case m.one != nil:
+		return m.one[state]
 	}
-	return m.one[state]
+	return 0.5
 }
 
 // Next returns the state that a bit leads to.
 func (m Model) Next(state int, bit byte) int {
-	if m.one == nil {
-		return 0
+	switch {
+	case m.pattern != nil:
+		return (state + 1) % len(m.pattern)
+	case m.one != nil:
+		return m.next[state][bit]
 	}
-	return m.next[state][bit]
+	return 0
 }
 
 // String returns a label for the data, such as "P(1) = 0.7".
 func (m Model) String() string {
-	if m.one == nil {
+	if m.name == "" {
 		return Random().name
 	}
 	return m.name

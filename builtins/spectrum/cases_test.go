@@ -5,6 +5,7 @@ import (
 	"errors"
 	"math"
 	"math/cmplx"
+	"runtime"
 	"strings"
 	"testing"
 	"time"
@@ -82,6 +83,61 @@ func TestPeriodicData(t *testing.T) {
 			}
 		}
 		closure(t, p)
+	}
+}
+
+// The direct way of data that repeat and the chain of code and data give one spectrum, whatever the driver.
+func TestPeriodicDataByChain(t *testing.T) {
+	for _, code := range []*linecode.Code{linecode.HDB3(), linecode.Code8b10b(), linecode.HDLC(), linecode.NRZM(), linecode.UnipolarNRZ()} {
+		code = code.Fed(source.Repeating(source.PRBS(7).Bits(127)))
+		for i, train := range []pulse.Train{
+			{Shape: pulse.Exponential(1, 0.2, 1.5), SymbolRate: 3e5},
+			{Shapes: map[float64]pulse.Shape{1: pulse.Rect(0.4)}},
+			{Transition: func(prev, next float64) pulse.Shape {
+				return pulse.Sum(pulse.Scaled(pulse.Rect(1), next), pulse.Scaled(pulse.Rect(0.1), prev-next))
+			}},
+		} {
+			got, want := must(spectrum.Exact(code, train)), must(spectrum.OfChain(code.Chain(), train))
+			if got.Name() != want.Name() || math.Abs(got.Total()/want.Total()-1) > 1e-13 {
+				t.Errorf("%s, train %d: mean square %v, want that of %s, %v", got.Name(), i, got.Total(), want.Name(), want.Total())
+			}
+			upto := 2 * want.SymbolRate()
+			g, w := got.Lines(upto), want.Lines(upto)
+			if len(g) != len(w) {
+				t.Errorf("%s, train %d: %d tones, want %d", got.Name(), i, len(g), len(w))
+				continue
+			}
+			for k := range w {
+				if g[k].Freq != w[k].Freq || math.Abs(g[k].Power-w[k].Power) > 1e-12*want.Total() {
+					t.Errorf("%s, train %d: tone %v, want %v", got.Name(), i, g[k], w[k])
+				}
+			}
+		}
+	}
+}
+
+// Long patterns: memory for the transform of the symbols and not for a chain, and none at all where there are too many.
+func TestMemoryOfLongPatterns(t *testing.T) {
+	allocated := func(do func()) uint64 {
+		var before, after runtime.MemStats
+		runtime.ReadMemStats(&before)
+		do()
+		runtime.ReadMemStats(&after)
+		return after.TotalAlloc - before.TotalAlloc
+	}
+	const n = 1<<20 - 1
+	code := linecode.HDB3().Fed(source.Repeating(source.PRBS(20).Bits(n)))
+	if got := allocated(func() { must(spectrum.Exact(code, pulse.Train{})) }) / n; got > 100 {
+		t.Errorf("%d bytes a symbol, want no more than 100", got)
+	}
+	longer := linecode.Code8b10b().Fed(source.Repeating(source.PRBS(23).Bits(1<<23 - 1)))
+	var err error
+	if got := allocated(func() { _, err = spectrum.Exact(longer, pulse.Train{}) }); got > 1<<20 {
+		t.Errorf("%d bytes before a refusal, want less than a megabyte", got)
+	}
+	const want = "spectrum: linecode: the symbols of 8b/10b, repeating 8388607 bits repeat after 83886070 only; the limit is 12000000; take a shorter pattern"
+	if err == nil || err.Error() != want {
+		t.Errorf("got  %v\nwant %s", err, want)
 	}
 }
 
@@ -418,8 +474,10 @@ func TestInterrupt(t *testing.T) {
 	}
 	ami := must(spectrum.Exact(linecode.AMI(), pulse.Train{}))
 	many := make([]float64, 1<<24)
+	long := linecode.HDB3().Fed(source.Repeating(source.PRBS(23).Bits(1<<23 - 1)))
 	jobs := map[string]func() error{
 		"exact":   func() error { _, err := spectrum.OfChain(walk, pulse.Train{}); return err },
+		"repeat":  func() error { _, err := spectrum.Exact(long, pulse.Train{}); return err },
 		"density": func() (err error) { defer recovered(&err); ami.Density(many, many); return nil },
 		"power":   func() (err error) { defer recovered(&err); ami.Lines(1e11); ami.Power(0, 1e9); return nil },
 	}

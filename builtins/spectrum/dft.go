@@ -75,6 +75,9 @@ func (d *dft) bluestein(ctx context.Context) error {
 	d.filter = make([]complex128, length)
 	square := 0 // k^2 mod 2n
 	for k := range n {
+		if k%(1<<16) == 0 && ctx.Err() != nil {
+			return context.Cause(ctx)
+		}
 		d.chirp[k] = unit(-float64(square) / float64(2*n))
 		c := complex(real(d.chirp[k]), -imag(d.chirp[k]))
 		d.filter[k] = c
@@ -142,6 +145,49 @@ func (d *dft) transform(ctx context.Context, x []complex128) error {
 		}
 	}
 	return nil
+}
+
+// real returns the transform of real x at 0 <= k <= len(x)/2; the rest is the conjugate of that, backwards. Of rows and
+// columns it needs half.
+func (d *dft) real(ctx context.Context, x []float64) ([]complex128, error) {
+	half := make([]complex128, d.n/2+1)
+	if d.rows == nil {
+		y := make([]complex128, d.n)
+		for i, v := range x {
+			y[i] = complex(v, 0)
+		}
+		err := d.transform(ctx, y)
+		copy(half, y)
+		return half, err
+	}
+	rows, cols := d.rows.n, d.cols.n
+	y := make([]complex128, (rows/2+1)*cols) // as in transform, c <= rows/2, column by column
+	row := make([]complex128, rows)
+	for b := range cols {
+		for a := range row {
+			row[a] = complex(x[cols*a+b], 0)
+		}
+		if err := d.rows.transform(ctx, row); err != nil {
+			return nil, err
+		}
+		for c, v := range row[:rows/2+1] {
+			y[c*cols+b] = v * unit(-float64(b*c%d.n)/float64(d.n))
+		}
+	}
+	for c := range rows/2 + 1 {
+		column := y[c*cols : (c+1)*cols]
+		if err := d.cols.transform(ctx, column); err != nil {
+			return nil, err
+		}
+		for e, v := range column {
+			if k := c + rows*e; k < len(half) {
+				half[k] = v
+			} else {
+				half[d.n-k] = complex(real(v), -imag(v))
+			}
+		}
+	}
+	return half, nil
 }
 
 // unit is exp(2 pi j turns).

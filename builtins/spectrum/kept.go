@@ -10,19 +10,19 @@ import (
 )
 
 // With one pulse for all levels, everything but that pulse, the rate and the volts is a matter of the code and its data:
-// tones and forms of the levels. They are kept for as long as the code's chain is, which nobody changes.
+// tones and forms of the levels. They are kept for as long as the code is.
 var kept struct {
 	sync.Mutex
-	parts map[weak.Pointer[linecode.Chain]][]part // guarded by the mutex; never changed once stored
+	parts map[weak.Pointer[linecode.Code]][]part // guarded by the mutex; never changed once stored
 }
 
 // recall sets the parts for a single pulse, from what is kept if that has lags enough for the pulse.
-func (p *PSD) recall(ctx context.Context, ch *linecode.Chain) error {
+func (p *PSD) recall(ctx context.Context, c *linecode.Code) error {
 	lags, err := p.reach()
 	if err != nil {
 		return err
 	}
-	key := weak.Make(ch)
+	key := weak.Make(c)
 	kept.Lock()
 	parts, known := kept.parts[key]
 	kept.Unlock()
@@ -30,17 +30,17 @@ func (p *PSD) recall(ctx context.Context, ch *linecode.Chain) error {
 		p.parts = parts
 		return nil
 	}
-	if err := p.analyse(ctx, ch); err != nil {
+	if err := p.study(ctx, c); err != nil {
 		return err
 	}
 	kept.Lock()
 	defer kept.Unlock()
 	if kept.parts == nil {
-		kept.parts = map[weak.Pointer[linecode.Chain]][]part{}
+		kept.parts = map[weak.Pointer[linecode.Code]][]part{}
 	}
 	kept.parts[key] = p.parts
 	if !known {
-		runtime.AddCleanup(ch, func(key weak.Pointer[linecode.Chain]) {
+		runtime.AddCleanup(c, func(key weak.Pointer[linecode.Code]) {
 			kept.Lock()
 			defer kept.Unlock()
 			delete(kept.parts, key)

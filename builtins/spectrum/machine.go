@@ -69,6 +69,8 @@ type lexicon struct {
 	shapes []pulse.Shape
 }
 
+func newLexicon(d *pulse.Drive) *lexicon { return &lexicon{drive: d, waves: map[[2]int32]int32{}} }
+
 // level numbers a level. Codes have few: a walk along them is faster than a hash, up to a point.
 func (x *lexicon) level(a float64) int32 {
 	const few = 16
@@ -109,7 +111,7 @@ func (x *lexicon) wave(prev, next int32) (int32, error) {
 // read translates a chain's levels to waveforms and sorts its edges by the state that they leave. It returns the lexicon
 // beside the machine; unless the driver looks at the level before, waveforms have the numbers of their levels.
 func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, *lexicon, error) {
-	x := &lexicon{drive: d, waves: map[[2]int32]int32{}}
+	x := newLexicon(d)
 	if d.Transitional() {
 		m, err := x.remember(ctx, ch)
 		return m, x, err
@@ -139,12 +141,37 @@ func read(ctx context.Context, ch *linecode.Chain, d *pulse.Drive) (*machine, *l
 		m.edges = append(m.edges, edge{int32(e.From), int32(e.To), e.P, words[from:len(words):len(words)]})
 	}
 	m.sort()
+	return m, x, x.wavesOfLevels()
+}
+
+// wavesOfLevels gives each level's waveform the number of the level, for drivers that do not look at the level before.
+func (x *lexicon) wavesOfLevels() error {
 	for i := range x.levels {
 		if _, err := x.wave(int32(i), int32(i)); err != nil {
-			return nil, nil, err
+			return err
 		}
 	}
-	return m, x, nil
+	return nil
+}
+
+// follow gives the waveforms of symbols, numbers of levels, that come again and again: the last is before the first.
+func (x *lexicon) follow(ctx context.Context, symbols []int32) ([]int32, error) {
+	if !x.drive.Transitional() {
+		return symbols, x.wavesOfLevels()
+	}
+	waves := make([]int32, len(symbols))
+	prev := symbols[len(symbols)-1]
+	for n, next := range symbols {
+		if n%(1<<16) == 0 && ctx.Err() != nil {
+			return nil, context.Cause(ctx)
+		}
+		w, err := x.wave(prev, next)
+		if err != nil {
+			return nil, err
+		}
+		waves[n], prev = w, next
+	}
+	return waves, nil
 }
 
 // remember is read for a driver that looks at the level before: the level joins the state. Before the first symbol it

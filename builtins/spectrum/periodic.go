@@ -46,8 +46,7 @@ func (m *machine) cycle(s int32) []int32 {
 	return states
 }
 
-// periodic computes the spectrum of a machine with single edges that starts in state s: what it comes to repeats after
-// D symbols, and its Fourier series are the tones. There is no continuous part.
+// periodic computes the spectrum of a machine with single edges that starts in state s.
 func periodic(ctx context.Context, m *machine, s int32, coef [][]float64, width, lags int) (*part, error) {
 	cycle := m.cycle(s)
 	symbols := 0
@@ -60,23 +59,28 @@ func periodic(ctx context.Context, m *machine, s int32, coef [][]float64, width,
 	if symbols > mostPeriod {
 		return nil, fmt.Errorf("spectrum: the symbols repeat after %d only; the limit is %d", symbols, mostPeriod)
 	}
-	sequences := make([][]float64, width)
-	for j := range sequences {
-		sequences[j] = make([]float64, 0, symbols)
+	waves := make([]int32, 0, symbols)
+	for _, t := range cycle {
+		waves = append(waves, m.edges[t].word...)
 	}
-	for n, t := range cycle {
-		if n%4096 == 0 && ctx.Err() != nil {
+	return recurrent(ctx, waves, coef, width, lags)
+}
+
+// recurrent computes the spectrum of waveforms that come again and again: their Fourier series are the tones. There is no
+// continuous part.
+func recurrent(ctx context.Context, waves []int32, coef [][]float64, width, lags int) (*part, error) {
+	sequences := vectors(width, len(waves))
+	for n, w := range waves {
+		if n%(1<<16) == 0 && ctx.Err() != nil {
 			return nil, context.Cause(ctx)
 		}
-		for _, w := range m.edges[t].word {
-			for j, v := range coef[w] {
-				sequences[j] = append(sequences[j], v)
-			}
+		for j, v := range coef[w] {
+			sequences[j][n] = v
 		}
 	}
 	tones, err := newComb(ctx, sequences, lags)
 	if err != nil {
 		return nil, err
 	}
-	return &part{tones: tones}, nil
+	return &part{prob: 1, tones: tones}, nil
 }

@@ -54,11 +54,62 @@ func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
 	if err != nil {
 		return nil, err
 	}
-	ch, err := chainOf(c)
+	return exact(page.Context(), c.Label(), d, func(ctx context.Context, p *PSD) error {
+		if len(p.basis) == 1 {
+			return p.recall(ctx, c)
+		}
+		return p.study(ctx, c)
+	})
+}
+
+// OfChain is [Exact] for a chain that is given edge by edge.
+func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
+	if err := check(ch); err != nil {
+		return nil, err
+	}
+	d, err := t.Drive(coder{ch})
 	if err != nil {
 		return nil, err
 	}
-	return exact(page.Context(), ch, d, true)
+	return exact(page.Context(), ch.Name, d, func(ctx context.Context, p *PSD) error { return p.analyse(ctx, ch) })
+}
+
+// exact makes the PSD whose parts, and basis if there is not one pulse for all levels, the function finds.
+func exact(ctx context.Context, name string, d *pulse.Drive, find func(context.Context, *PSD) error) (*PSD, error) {
+	p := &PSD{name: name, drive: d}
+	shape, single := d.Single()
+	if single {
+		p.basis = []pulse.Shape{shape}
+	}
+	switch err := find(ctx, p); {
+	case err != nil && ctx.Err() != nil:
+		return nil, interrupted(ctx)
+	case err != nil:
+		return nil, err
+	}
+	// A shape of energy 1 whose overlap with the rectangle of energy 1 is 1 is that rectangle (Schwarz).
+	p.flat = single && shape.Overlap(shape, 0) == 1 && shape.Overlap(pulse.Rect(1), 0) == 1
+	for _, c := range p.parts {
+		p.total += c.prob * p.square(&c) * p.volts2()
+	}
+	return p, nil
+}
+
+// study works out the parts of a code: from the symbols that come again and again if its data repeat, otherwise from its
+// chain.
+func (p *PSD) study(ctx context.Context, c *linecode.Code) error {
+	symbols, err := c.Cycle(mostPeriod)
+	if err != nil {
+		return fmt.Errorf("spectrum: %w", err)
+	}
+	if symbols != nil {
+		return p.repeat(ctx, c.Levels(), symbols)
+	}
+	ch, err := chainOf(c)
+	if err != nil {
+		return err
+	}
+	return p.analyse(ctx, ch)
 }
 
 // chainOf returns the code's chain. One that is too large, or an interrupt, panics there and is an error here.
@@ -75,59 +126,34 @@ func chainOf(c *linecode.Code) (ch *linecode.Chain, err error) {
 	return c.Chain(), nil
 }
 
-// OfChain is [Exact] for a chain that is given edge by edge.
-func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
-	if err := check(ch); err != nil {
-		return nil, err
-	}
-	d, err := t.Drive(coder{ch})
+// repeat is analyse for symbols, places in levels, that come again and again.
+func (p *PSD) repeat(ctx context.Context, levels []float64, symbols []int32) error {
+	x := newLexicon(p.drive)
+	x.levels = levels
+	waves, err := x.follow(ctx, symbols)
 	if err != nil {
-		return nil, err
+		return err
 	}
-	return exact(page.Context(), ch, d, false)
+	coef := p.coefficients(x)
+	lags, err := p.reach()
+	if err != nil {
+		return err
+	}
+	part, err := recurrent(ctx, waves, coef, len(p.basis), lags)
+	if err != nil {
+		return err
+	}
+	p.parts = append(p.parts, *part)
+	return nil
 }
 
-// exact is for a chain that was checked. keep tells that nobody changes it, so that what is known of it may be kept.
-func exact(ctx context.Context, ch *linecode.Chain, d *pulse.Drive, keep bool) (*PSD, error) {
-	p := &PSD{name: ch.Name, drive: d}
-	shape, single := d.Single()
-	var err error
-	if single {
-		p.basis = []pulse.Shape{shape}
-	}
-	if single && keep {
-		err = p.recall(ctx, ch)
-	} else {
-		err = p.analyse(ctx, ch)
-	}
-	switch {
-	case err != nil && ctx.Err() != nil:
-		return nil, interrupted(ctx)
-	case err != nil:
-		return nil, err
-	}
-	// A shape of energy 1 whose overlap with the rectangle of energy 1 is 1 is that rectangle (Schwarz).
-	p.flat = single && shape.Overlap(shape, 0) == 1 && shape.Overlap(pulse.Rect(1), 0) == 1
-	for _, c := range p.parts {
-		p.total += c.prob * p.square(&c) * p.volts2()
-	}
-	return p, nil
-}
-
-// analyse works out the parts, and the basis unless there is one pulse for all levels.
+// analyse works out the parts of a chain.
 func (p *PSD) analyse(ctx context.Context, ch *linecode.Chain) error {
 	m, x, err := read(ctx, ch, p.drive)
 	if err != nil {
 		return err
 	}
-	var coef [][]float64
-	if p.basis != nil {
-		for _, a := range x.levels {
-			coef = append(coef, []float64{a})
-		}
-	} else {
-		p.basis, coef = waveforms(x.shapes)
-	}
+	coef := p.coefficients(x)
 	lags, err := p.reach()
 	if err != nil {
 		return err
@@ -147,6 +173,18 @@ func (p *PSD) analyse(ctx context.Context, ch *linecode.Chain) error {
 		p.parts = append(p.parts, *part)
 	}
 	return nil
+}
+
+// coefficients expresses the waveforms through the basis, which it makes unless there is one pulse for all levels.
+func (p *PSD) coefficients(x *lexicon) (coef [][]float64) {
+	if p.basis == nil {
+		p.basis, coef = waveforms(x.shapes)
+		return coef
+	}
+	for _, a := range x.levels {
+		coef = append(coef, []float64{a})
+	}
+	return coef
 }
 
 // mostSymbols is the longest support of a waveform, in symbols.

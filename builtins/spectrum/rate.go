@@ -3,6 +3,7 @@ package spectrum
 import (
 	"slices"
 
+	"linewright/builtins/internal/markov"
 	"linewright/builtins/linecode"
 )
 
@@ -80,13 +81,6 @@ func (c coder) FixedRate() (bits, symbols int, fixed bool) {
 	if symbols == 0 || bits < 0 {
 		return 0, 0, false
 	}
-	g := gcd(bits, symbols)
+	g := markov.GCD(bits, symbols)
 	return bits / g, symbols / g, true
-}
-
-func gcd(a, b int) int {
-	for b != 0 {
-		a, b = b, a%b
-	}
-	return max(a, -a)
 }

@@ -5,7 +5,6 @@ import (
 	"context"
 	"fmt"
 	"math"
-	"math/bits"
 	"slices"
 )
 
@@ -48,14 +47,14 @@ func newComb(ctx context.Context, sequences [][]float64, lags int) (*comb, error
 		return nil, err
 	}
 	for _, x := range sequences {
-		y := make([]complex128, n)
-		for i, v := range x {
-			y[i] = complex(v/float64(n), 0)
-		}
-		if err := d.transform(ctx, y); err != nil {
+		y, err := d.real(ctx, x)
+		if err != nil {
 			return nil, err
 		}
-		c.coef = append(c.coef, slices.Clone(y[:n/2+1]))
+		for k := range y {
+			y[k] /= complex(float64(n), 0)
+		}
+		c.coef = append(c.coef, y)
 	}
 	return c, nil
 }
@@ -125,19 +124,10 @@ func (p *PSD) tone(c *comb, k int) float64 {
 // absent is the part of the mean square below which a tone is none.
 const absent = 1e-14
 
-// A fraction is k/D symbol rates in lowest terms.
-type fraction struct{ k, d uint64 }
-
-func (a fraction) compare(b fraction) int {
-	ah, al := bits.Mul64(a.k, b.d)
-	bh, bl := bits.Mul64(b.k, a.d)
-	return cmp.Or(cmp.Compare(ah, bh), cmp.Compare(al, bl))
-}
-
-// frequency is k/period symbol rates in Hz, the quotient of the exact product, rounded once: the one frequency of a
-// tone, however far its fraction is reduced, and for whole, half and quarter symbol rates what multiplying by these gives.
-func (p *PSD) frequency(k, period uint64) float64 {
-	n, d, rate := float64(k), float64(period), p.drive.SymbolRate
+// frequency is tone k of a comb in Hz: the exact k/period symbol rates, rounded once, and so the same number however far
+// the fraction is reduced. Product and quotient leave their errors to a fused multiplication.
+func (p *PSD) frequency(c *comb, k int) float64 {
+	n, d, rate := float64(k), float64(c.period), p.drive.SymbolRate
 	product := n * rate
 	q := product / d
 	missing := math.FMA(-q, d, product) + math.FMA(n, rate, -product)
@@ -147,7 +137,7 @@ func (p *PSD) frequency(k, period uint64) float64 {
 // from is the first tone of a comb with f <= frequency.
 func (p *PSD) from(c *comb, f float64) int {
 	k := int(math.Max(0, math.Floor(f/p.drive.SymbolRate*float64(c.period))-1))
-	for p.frequency(uint64(k), uint64(c.period)) < f {
+	for p.frequency(c, k) < f {
 		k++
 	}
 	return k
@@ -177,30 +167,25 @@ func (p *PSD) Lines(fmax float64) []Line {
 	}
 	ctx := current()
 	least := absent * p.total / p.volts2()
-	type tone struct {
-		fraction
-		power float64
-	}
-	var tones []tone
+	var lines []Line
 	for _, part := range p.parts {
-		if part.tones == nil {
-			continue
-		}
 		p.each(ctx, part.tones, 0, math.Nextafter(fmax, math.Inf(1)), func(k int, power float64) {
 			if power *= part.prob; power > least {
-				g := gcd(k, part.tones.period)
-				tones = append(tones, tone{fraction{uint64(k / g), uint64(part.tones.period / g)}, power})
+				lines = append(lines, Line{p.frequency(part.tones, k), power * p.volts2()})
 			}
 		})
 	}
-	slices.SortStableFunc(tones, func(a, b tone) int { return a.compare(b.fraction) })
-	var lines []Line
-	for i, t := range tones {
-		if i > 0 && t.fraction == tones[i-1].fraction {
-			lines[len(lines)-1].Power += t.power * p.volts2()
-			continue
-		}
-		lines = append(lines, Line{p.frequency(t.k, t.d), t.power * p.volts2()})
+	if len(p.parts) == 1 {
+		return lines
 	}
-	return lines
+	slices.SortStableFunc(lines, func(a, b Line) int { return cmp.Compare(a.Freq, b.Freq) })
+	merged := lines[:0]
+	for _, l := range lines {
+		if n := len(merged); n > 0 && merged[n-1].Freq == l.Freq {
+			merged[n-1].Power += l.Power
+		} else {
+			merged = append(merged, l)
+		}
+	}
+	return merged
 }
