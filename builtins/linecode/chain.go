@@ -19,10 +19,11 @@ type Chain struct {
 
 // An Edge of a [Chain] is one step: with probability P the chain goes from From to To and emits Levels.
 type Edge struct {
-	From, To int
-	P        float64
-	Levels   []float64 // symbol levels in order of time; may be empty
-	Bits     int       // source bits that the step consumes
+	From   int       // state before the step
+	To     int       // state after it
+	P      float64   // probability of the step, given From
+	Levels []float64 // symbol levels in order of time; may be empty
+	Bits   int       // source bits that the step consumes
 }
 
 // maxEdges is the size above which a joint chain is refused: its edges then take about 1 GB.
@@ -36,7 +37,7 @@ const maxEdges = 1 << 24
 // The chain is made once and shared: read only. Chain panics if it would have more than 2^24 edges, and when the running
 // cell is interrupted.
 func (c *Code) Chain() *Chain {
-	c.mu.Lock()
+	c.made().mu.Lock()
 	defer c.mu.Unlock()
 	if c.joint == nil {
 		joint, err := c.join(page.Context(), maxEdges)

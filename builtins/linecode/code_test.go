@@ -1,6 +1,7 @@
 package linecode
 
 import (
+	"reflect"
 	"slices"
 	"sync"
 	"testing"
@@ -40,4 +41,29 @@ func TestFiguresAreCopies(t *testing.T) {
 	names := Names()
 	names[0] = "x"
 	wantEqual(t, "name", Names()[0], "unipolar NRZ")
+}
+
+// What a newcomer who dropped the error of New does with the code says so: every method, as its error or by a panic.
+func TestNilCode(t *testing.T) {
+	var c *Code
+	code := reflect.ValueOf(c)
+	for i := range code.NumMethod() {
+		t.Run(code.Type().Method(i).Name, func(t *testing.T) {
+			method := code.Method(i)
+			args := make([]reflect.Value, method.Type().NumIn())
+			for k := range args {
+				args[k] = reflect.Zero(method.Type().In(k))
+			}
+			last := method.Type().NumOut() - 1
+			var err error
+			if method.Type().Out(last) == reflect.TypeFor[error]() {
+				err, _ = method.Call(args)[last].Interface().(error)
+			} else {
+				err = panicOf(t, func() { method.Call(args) })
+			}
+			if err == nil || err.Error() != "linecode: this code is nil; look at the error that New or ByName returned" {
+				t.Errorf("says %v", err)
+			}
+		})
+	}
 }

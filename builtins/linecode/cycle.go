@@ -17,6 +17,9 @@ const mostWords = 1 << 26
 // It is an error if the period has more than the given number of symbols, which is found before any are stored, if
 // it does not show within 2^26 words, and if the running cell is interrupted.
 func (c *Code) Cycle(most int) ([]int32, error) {
+	if c == nil {
+		return nil, errNil
+	}
 	if c.data.Pattern() == nil {
 		return nil, nil
 	}

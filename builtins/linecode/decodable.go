@@ -22,11 +22,18 @@ type Verdict struct {
 	// word in which they differ. It is 0 for codes whose words differ in their first symbols. Only where Decodable.
 	Delay int
 
-	// One and Other are two data sequences that give the same symbols, where the code is not decodable and not
-	// undecided. If RepeatOne is 0, they lead to the same state and the same data may follow; otherwise the last
-	// RepeatOne and RepeatOther bits repeat for ever.
-	One, Other             []byte
-	RepeatOne, RepeatOther int
+	// One is the first of two data sequences, One and Other, that give the same symbols, where the code is not decodable
+	// and not undecided. If RepeatOne is 0, they lead to the same state and the same data may follow.
+	One []byte
+
+	// Other is the second of the two data sequences that give the same symbols.
+	Other []byte
+
+	// RepeatOne is the number of bits at the end of One that repeat for ever; 0 if none need to.
+	RepeatOne int
+
+	// RepeatOther is the number of bits at the end of Other that repeat for ever; 0 if none need to.
+	RepeatOther int
 }
 
 // String says the verdict in a sentence.
@@ -77,7 +84,7 @@ const (
 // finite order", IEEE Trans. Electron. Comput. EC-14 (1965) 561-569, from memory): data are lost if and only if two such
 // encoders can come to the same state, or go on for ever.
 func (c *Code) Decodable() Verdict {
-	v, err := c.machine.decide(page.Context(), c.name)
+	v, err := c.made().machine.decide(page.Context(), c.name)
 	if err != nil {
 		panic(err)
 	}

@@ -15,8 +15,10 @@ import (
 // on. Symbols are levels exactly as [Code.Levels] has them: decide what was received before it is decoded. A value that
 // is no level is a fault.
 //
-// The bits are all that were encoded if the symbols end where Encode ends them. If they end earlier, the bits are those
-// in which all data agree that give these symbols, which is short by no more than the delay of [Code.Decodable].
+// The bits are all that were encoded if the symbols end where Encode ends them. Of every code, with a Flush or without,
+// data that end exactly with the symbols count as complete, even if the symbols were cut there and other data that go on
+// give them too. If none end there, the bits are those in which all data agree that give these symbols, which is short by
+// no more than the delay of [Code.Decodable].
 //
 // At a fault the bits go on in place. Those that belong before it are of data that give the symbols before it, of the
 // kind that most such data share; those after it are of data that give the symbols from it on, from any state that the
@@ -26,6 +28,9 @@ import (
 // Decode refuses with an error a code that is not decodable, naming two data sequences with the same symbols, and
 // symbols that are NaN.
 func (c *Code) Decode(symbols []float64) (bits []byte, faults []int, err error) {
+	if c == nil {
+		return nil, nil, errNil
+	}
 	ctx := page.Context()
 	for i, a := range symbols {
 		if math.IsNaN(a) {

@@ -10,6 +10,9 @@ import (
 // line the first [Code.Delay] symbols are left out and those still owed at the end are appended, so that HDB3 answers
 // one symbol a bit, in place. Bits that do not fill a word are an error that says how many are over.
 func (c *Code) Encode(bits []byte) ([]float64, error) {
+	if c == nil {
+		return nil, errNil
+	}
 	m := c.machine
 	ctx := page.Context()
 	if over := len(bits) % m.bits; over != 0 {

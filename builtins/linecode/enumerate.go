@@ -102,9 +102,9 @@ func (e *enumeration) run(ctx context.Context) (err error) {
 func (e *enumeration) enter(state any) (int32, error) {
 	if state != nil && !reflect.ValueOf(state).Comparable() {
 		if len(e.states) == 0 {
-			return 0, fmt.Errorf("the start is a %T, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions", state)
+			return 0, fmt.Errorf("the start is %s", incomparable(state))
 		}
-		return 0, fmt.Errorf("the state after Step %s is a %T, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions", e.where(), state)
+		return 0, fmt.Errorf("the state after Step %s is %s", e.where(), incomparable(state))
 	}
 	if n, ok := e.number[state]; ok {
 		return n, nil
@@ -117,6 +117,17 @@ func (e *enumeration) enter(state any) (int32, error) {
 	e.states = append(e.states, state)
 	e.m.parent = append(e.m.parent, int32(e.state<<e.spec.Bits)|int32(e.word))
 	return n, nil
+}
+
+// incomparable says what a state is that cannot be compared. The type itself would say little: that of an interpreted
+// struct has other names than its author gave.
+func incomparable(state any) string {
+	article := "a"
+	kind := reflect.TypeOf(state).Kind()
+	if kind == reflect.Array {
+		article = "an"
+	}
+	return fmt.Sprintf("%s %v, which cannot be compared; use a struct, an array or a plain value without slices, maps and functions", article, kind)
 }
 
 // emit returns the number of a symbol sequence, a new one if it has not been seen.

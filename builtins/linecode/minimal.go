@@ -16,7 +16,7 @@ import (
 // Computations (1971) 189-196.
 func (c *Code) Minimal() int {
 	ctx := page.Context()
-	m := c.machine
+	m := c.made().machine
 	var states []int32
 	for _, class := range m.graph().Closed() {
 		for _, s := range class {

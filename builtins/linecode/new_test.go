@@ -34,9 +34,9 @@ func TestNewRefusesWhatIsNoMachine(t *testing.T) {
 		"NaN":          {Spec{Name: "x", Bits: 1, Start: 7, Step: give(1, math.NaN())}, "linecode: x: Step in state 7 on word 0 gives the level NaN at position 1; levels are finite"},
 		"infinite":     {Spec{Name: "x", Bits: 1, Step: give(math.Inf(-1))}, "linecode: x: Step in state <nil> on word 0 gives the level -Inf at position 0; levels are finite"},
 		"long step":    {Spec{Name: "x", Bits: 1, Step: give(make([]float64, 70000)...)}, "linecode: x: Step in state <nil> on word 0 gives 70000 symbols; one step may give 65536"},
-		"start a list": {Spec{Name: "x", Bits: 1, Start: []int{1}, Step: still}, "linecode: x: the start is a []int, which cannot be compared; use a struct, an array or a plain value instead of slices, maps and functions"},
+		"start a list": {Spec{Name: "x", Bits: 1, Start: []int{1}, Step: still}, "linecode: x: the start is a slice, which cannot be compared; use a struct, an array or a plain value without slices, maps and functions"},
 		"a list within": {Spec{Name: "x", Bits: 1, Start: 0, Step: func(any, uint) (any, []float64) { return [1]any{map[int]int{}}, []float64{0} }},
-			"linecode: x: the state after Step in state 0 on word 0 is a [1]interface {}, which cannot be compared"},
+			"linecode: x: the state after Step in state 0 on word 0 is an array, which cannot be compared"},
 		"no symbols at all": {Spec{Name: "x", Bits: 1, Step: give()}, "linecode: x: no symbols for ever: from state <nil> the words 0 lead back to it without a symbol"},
 		"no symbols in a cycle": {Spec{Name: "x", Bits: 2, Start: 0, Step: func(s any, w uint) (any, []float64) {
 			if w == 2 && s.(int) > 0 {

@@ -11,7 +11,7 @@ import (
 // has the same ratio of source bits to symbols. Fixed framing has, stuffing has not. The ratio is bits to symbols in
 // lowest terms; both are 0 where the rate is not fixed.
 func (c *Code) FixedRate() (bits, symbols int, fixed bool) {
-	m := c.machine
+	m := c.made().machine
 	component, count := m.graph().Components()
 	// In each component the ratio is fixed if the symbols that are ahead of the mean are a function of the state. A walk
 	// through the component measures that against the ratio of one cycle, in units that keep all numbers whole.

@@ -11,11 +11,16 @@ import (
 // unit of symbol level in full-width rectangles.
 type Train struct {
 	// BitRate is the rate of source bits in Hz. It needs a code whose rate no data can change; for others (bit stuffing)
-	// give SymbolRate. SymbolRate is the rate of symbols in Hz. At most one of the two; none means 1 symbol/s.
-	BitRate, SymbolRate float64
-	// Level is in volts per unit of symbol level; Peak in volts at the code's largest level. At most one of the two;
-	// none means Level 1. Both are volts across the load as sent.
-	Level, Peak float64
+	// give SymbolRate. Give at most one of the two; none means 1 symbol/s.
+	BitRate float64
+	// SymbolRate is the rate of symbols in Hz. Give at most one of BitRate and SymbolRate; none means 1 symbol/s.
+	SymbolRate float64
+	// Level is in volts per unit of symbol level, across the load as sent. Give at most one of Level and Peak; none means
+	// Level 1.
+	Level float64
+	// Peak is in volts at the code's largest level, across the load as sent. Give at most one of Level and Peak; none
+	// means Level 1.
+	Peak float64
 	// Load is in ohms. Zero means not stated: then only V^2 is given, and asking for watts or dBm is an error.
 	Load float64
 	// Shape is the pulse of one symbol: a symbol of level a is Level a Shape(t/T). The zero value is a full-width
@@ -56,6 +61,9 @@ type Drive struct {
 // if Peak is given for a code all of whose levels are 0, if Shapes names a level that the code does not have, and if
 // Transition stands beside Shape or Shapes.
 func (t Train) Drive(c Coder) (*Drive, error) {
+	if c == nil {
+		return nil, errors.New("pulse: Drive got no code; give it one from linecode")
+	}
 	for _, q := range []struct {
 		name string
 		v    float64

@@ -3,6 +3,7 @@ package spectrum_test
 import (
 	"context"
 	"errors"
+	"fmt"
 	"math"
 	"math/cmplx"
 	"runtime"
@@ -412,6 +413,17 @@ func TestRefusals(t *testing.T) {
 	}
 	if _, err := p.DBm(1); err == nil || !strings.Contains(err.Error(), "Load") {
 		t.Errorf("dBm without a load: error %v does not name Load", err)
+	}
+	loaded := must(spectrum.Exact(linecode.AMI(), pulse.Train{Load: 120}))
+	for _, v2 := range []float64{-1, nan, inf, -inf} {
+		for _, convert := range []func(float64) (float64, error){loaded.Watts, loaded.DBm} {
+			if v, err := convert(v2); v != 0 || err == nil || !strings.HasPrefix(err.Error(), fmt.Sprintf("spectrum: %v V^2 is no power", v2)) {
+				t.Errorf("of %v V^2: %v and error %v", v2, v, err)
+			}
+		}
+	}
+	if v, err := loaded.DBm(0); !math.IsInf(v, -1) || err != nil {
+		t.Errorf("of 0 V^2: %v dBm, error %v, want -Inf", v, err)
 	}
 	if _, err := spectrum.Exact(linecode.AMI(), pulse.Train{Shape: pulse.HalfSine(1e6)}); err == nil || !strings.Contains(err.Error(), "too long") {
 		t.Errorf("a pulse of a million symbols: error %v", err)

@@ -243,7 +243,7 @@ func (p *PSD) Power(lo, hi float64) float64 {
 	if !(lo >= 0 && lo <= hi) || math.IsInf(lo, 0) {
 		panic(fmt.Errorf("spectrum: Power(%v, %v): give 0 <= lo <= hi in Hz; hi may be +Inf", lo, hi))
 	}
-	return p.volts2() * p.power(current(), p.quadrature(), lo, hi)
+	return p.made().volts2() * p.power(current(), p.quadrature(), lo, hi)
 }
 
 func (p *PSD) power(ctx context.Context, q *plan, lo, hi float64) float64 {
@@ -283,7 +283,7 @@ func (p *PSD) Within(part float64) float64 {
 		panic(fmt.Errorf("spectrum: Within(%v): give a part of the power greater than 0 and less than 1", part))
 	}
 	ctx := current()
-	q := p.quadrature()
+	q := p.made().quadrature()
 	mean := 0.0
 	for _, c := range p.parts {
 		mean += c.prob * p.tone(c.tones, 0)

@@ -2,6 +2,7 @@ package spectrum
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"runtime"
@@ -50,6 +51,9 @@ type Class struct {
 //
 // What does not depend on the train is kept with the code: the next train of the same code is quick.
 func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
+	if c == nil {
+		return nil, errors.New("spectrum: Exact got a nil code; look at the error that linecode.New or linecode.ByName returned")
+	}
 	d, err := t.Drive(c)
 	if err != nil {
 		return nil, err
@@ -64,6 +68,9 @@ func Exact(c *linecode.Code, t pulse.Train) (*PSD, error) {
 
 // OfChain is [Exact] for a chain that is given edge by edge.
 func OfChain(ch *linecode.Chain, t pulse.Train) (*PSD, error) {
+	if ch == nil {
+		return nil, errors.New("spectrum: OfChain got a nil chain; give it states and edges")
+	}
 	if err := check(ch); err != nil {
 		return nil, err
 	}
@@ -293,22 +300,33 @@ func (p *PSD) square(c *part) float64 {
 
 func (p *PSD) volts2() float64 { return p.drive.Volts * p.drive.Volts }
 
+// errNil is what a method of a nil PSD says: the error beside it was not looked at.
+var errNil = errors.New("spectrum: this spectrum is nil; look at the error that Exact or OfChain returned")
+
+// made returns the PSD. It panics if that is nil.
+func (p *PSD) made() *PSD {
+	if p == nil {
+		panic(errNil)
+	}
+	return p
+}
+
 // Name returns the name of the code and its data.
-func (p *PSD) Name() string { return p.name }
+func (p *PSD) Name() string { return p.made().name }
 
 // SymbolRate returns the rate of symbols in Hz.
-func (p *PSD) SymbolRate() float64 { return p.drive.SymbolRate }
+func (p *PSD) SymbolRate() float64 { return p.made().drive.SymbolRate }
 
 // Load returns the load in ohms, 0 if the train does not state one.
-func (p *PSD) Load() float64 { return p.drive.Load }
+func (p *PSD) Load() float64 { return p.made().drive.Load }
 
 // Total returns the mean square of the waveform in V^2. It comes from the time domain.
-func (p *PSD) Total() float64 { return p.total }
+func (p *PSD) Total() float64 { return p.made().total }
 
 // Classes returns the closed classes that the data can end in, with the probability and the spectrum of each; nil if
 // there is one class only. The PSD itself is their average.
 func (p *PSD) Classes() []Class {
-	if len(p.parts) == 1 {
+	if len(p.made().parts) == 1 {
 		return nil
 	}
 	classes := make([]Class, len(p.parts))
@@ -339,7 +357,7 @@ func (p *PSD) Density(dst, f []float64) []float64 {
 		panic(fmt.Errorf("spectrum: Density of %d frequencies into %d values; give as many, or nil", len(f), len(dst)))
 	}
 	ctx := current()
-	scale := 2 * p.volts2() / p.drive.SymbolRate
+	scale := 2 * p.made().volts2() / p.drive.SymbolRate
 	nu := make([]float64, min(len(f), 16*block))
 	for rest := dst; len(f) > 0; {
 		n := min(len(f), len(nu))
@@ -473,7 +491,7 @@ func (p *PSD) some(dst, nu []float64, w *workspace) {
 // String returns a summary of a few lines.
 func (p *PSD) String() string {
 	var b strings.Builder
-	fmt.Fprintf(&b, "spectrum of %s: %.6g symbols/s, mean square %.6g V^2", p.name, p.drive.SymbolRate, p.total)
+	fmt.Fprintf(&b, "spectrum of %s: %.6g symbols/s, mean square %.6g V^2", p.Name(), p.drive.SymbolRate, p.total)
 	lines := p.Lines(2 * p.drive.SymbolRate)
 	const most = 6
 	switch {

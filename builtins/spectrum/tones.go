@@ -166,7 +166,7 @@ func (p *PSD) Lines(fmax float64) []Line {
 		panic(fmt.Errorf("spectrum: Lines(%v): give the highest frequency in Hz, finite and at least 0", fmax))
 	}
 	ctx := current()
-	least := absent * p.total / p.volts2()
+	least := absent * p.made().total / p.volts2()
 	var lines []Line
 	for _, part := range p.parts {
 		p.each(ctx, part.tones, 0, math.Nextafter(fmax, math.Inf(1)), func(k int, power float64) {
