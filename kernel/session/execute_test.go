@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"runtime"
 	"strings"
 	"testing"
 	"time"
@@ -316,5 +317,41 @@ func TestLargeCode(t *testing.T) {
 	_, output := c.execute(`fmt.Println("`+strings.Repeat("y", 2<<20)+`")`, nil)
 	if n := len(text(t, output, "stdout")); n != 2<<20+1 {
 		t.Errorf("%d bytes", n)
+	}
+}
+
+// A cell that runs long gets room for its garbage as long as it runs, and a large heap gets no more than it should.
+func TestSpace(t *testing.T) {
+	percent := func() uint64 { return metric("/gc/gogc:percent") }
+	normal := percent()
+	until := func(what string, reached func() bool) {
+		t.Helper()
+		for end := time.Now().Add(10 * time.Second); !reached(); time.Sleep(time.Millisecond) {
+			if time.Now().After(end) {
+				t.Fatalf("%s: the collector is set to %d %%", what, percent())
+			}
+		}
+	}
+	_, c := serve(t, &fake{cells: map[string]func(context.Context, cell.Output) (*plotting.Bundle, error){
+		"short": func(context.Context, cell.Output) (*plotting.Bundle, error) {
+			if got := percent(); got != normal {
+				t.Errorf("a short cell runs with %d %%, want %d", got, normal)
+			}
+			return nil, nil
+		},
+		"long": func(context.Context, cell.Output) (*plotting.Bundle, error) {
+			until("a small heap", func() bool { return percent() >= 2*normal })
+			large := make([]byte, wide)
+			runtime.GC()
+			until("a large heap", func() bool { return percent() == normal })
+			runtime.KeepAlive(large)
+			runtime.GC()
+			until("a small heap again", func() bool { return percent() >= 2*normal })
+			return nil, nil
+		},
+	}})
+	for _, code := range []string{"short", "long", "short"} {
+		c.execute(code, nil)
+		until("after "+code, func() bool { return percent() == normal })
 	}
 }
