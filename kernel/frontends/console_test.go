@@ -14,7 +14,7 @@ func TestConsole(t *testing.T) {
 	console := need(t, "jupyter-console")
 	session := fmt.Sprintf("linewright-%d", time.Now().UnixNano())
 	args := []string{"-L", session, "-f", "/dev/null", "new-session", "-d", "-s", session, "-x", "110", "-y", "50",
-		console + " --kernel linewright"}
+		console + " --kernel linewright --ZMQTerminalInteractiveShell.kernel_is_complete_timeout=30"} // by itself it gives up after 1 s and wants a blank line from then on
 	cmd := exec.Command(tmux, args...)
 	cmd.Env = append(installed, "TERM=xterm-256color", "LC_ALL=C.UTF-8")
 	if out, err := cmd.CombinedOutput(); err != nil {
