@@ -44,7 +44,8 @@ type Class struct {
 }
 
 // Exact returns the exact spectrum of a code, fed as it is, sent by a train. It is an error if the train does not fit the
-// code (pulse.Train.Drive), and if the machine is too large for the method; the message has the sizes.
+// code (pulse.Train.Drive), if the machine is too large for the method, and if data that repeat give symbols that do so
+// only after more than 12,000,000; the message has the sizes.
 //
 // Where the data can end in one of several closed classes, density and tones are averaged with the probabilities of
 // ending there, and [PSD.Classes] gives each.

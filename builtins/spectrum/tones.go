@@ -18,7 +18,8 @@ type comb struct {
 	lags   int
 }
 
-// mostPeriod is the longest period that is transformed; the work then takes about half a gigabyte.
+// mostPeriod is the longest period that is transformed. The work then takes about half a gigabyte, if the period is a
+// prime three.
 const mostPeriod = 12_000_000
 
 // newComb takes sequences of length period, one a component, and keeps their mean products up to lag lags-1.
