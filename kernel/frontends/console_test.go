@@ -8,13 +8,16 @@ import (
 	"time"
 )
 
-// TestConsole runs a cell in the terminal console and reads the text picture of its figure off the screen.
+// TestConsole runs cells in the terminal console and reads them off its screen: text, the text picture of a figure, an
+// error, a slot, a question.
 func TestConsole(t *testing.T) {
 	tmux := need(t, "tmux")
 	console := need(t, "jupyter-console")
 	session := fmt.Sprintf("linewright-%d", time.Now().UnixNano())
 	args := []string{"-L", session, "-f", "/dev/null", "new-session", "-d", "-s", session, "-x", "110", "-y", "50",
-		console + " --kernel linewright --ZMQTerminalInteractiveShell.kernel_is_complete_timeout=30"} // by itself it gives up after 1 s and wants a blank line from then on
+		console + " --kernel linewright" +
+			" --ZMQTerminalInteractiveShell.kernel_is_complete_timeout=30" + // else it gives up after 1 s and wants a blank line from then on
+			" --ZMQTerminalInteractiveShell.image_handler=None"} // else it opens each figure in an image viewer as well
 	cmd := exec.Command(tmux, args...)
 	cmd.Env = append(installed, "TERM=xterm-256color", "LC_ALL=C.UTF-8")
 	if out, err := cmd.CombinedOutput(); err != nil {
@@ -55,8 +58,19 @@ func TestConsole(t *testing.T) {
 	wait("In [3]:")
 	enter(`plotting.Spectrum(p)`)
 	wait("MHz") // the picture's frequency axis
-	t.Log("\n" + screen())
 	if s := screen(); !strings.Contains(s, "AMI") {
 		t.Errorf("the picture does not name its code:\n%s", s)
 	}
+	wait("In [4]:")
+	enter(`uint8(1) + "x"`)
+	wait("mismatched types")
+	wait("In [5]:")
+	enter(`page.Slot("best").Set("AMI for now")`)
+	wait("\nAMI for now")
+	wait("In [6]:")
+	enter(`fmt.Println("chosen:", page.Ask("candidate? "))`)
+	wait("\ncandidate?")
+	enter("HDB3")
+	wait("\nchosen: HDB3")
+	t.Log("\n" + screen())
 }
