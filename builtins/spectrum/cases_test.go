@@ -491,6 +491,7 @@ func TestInterrupt(t *testing.T) {
 		"exact":   func() error { _, err := spectrum.OfChain(walk, pulse.Train{}); return err },
 		"repeat":  func() error { _, err := spectrum.Exact(long, pulse.Train{}); return err },
 		"density": func() (err error) { defer recovered(&err); ami.Density(many, many); return nil },
+		"lines":   func() (err error) { defer recovered(&err); ami.Lines(1e300); return nil },
 		"power":   func() (err error) { defer recovered(&err); ami.Lines(1e11); ami.Power(0, 1e9); return nil },
 	}
 	for name, job := range jobs {

@@ -135,9 +135,14 @@ func (p *PSD) frequency(c *comb, k int) float64 {
 	return q + missing/d
 }
 
-// from is the first tone of a comb with f <= frequency.
+// from is the first tone of a comb with f <= frequency: no number that is ever come to where tones are too many to tell
+// their frequencies apart.
 func (p *PSD) from(c *comb, f float64) int {
-	k := int(math.Max(0, math.Floor(f/p.drive.SymbolRate*float64(c.period))-1))
+	about := math.Floor(f / p.drive.SymbolRate * float64(c.period))
+	if about > 1<<52 {
+		return math.MaxInt
+	}
+	k := int(math.Max(0, about-1))
 	for p.frequency(c, k) < f {
 		k++
 	}
