@@ -326,6 +326,18 @@ func (l *lowering) ownFrame(n *ast.FuncLit) ast.Expr {
 	return call
 }
 
+// fillClauses puts a statement into empty clauses of a switch: the interpreter cannot fall through into an empty one.
+func fillClauses(s *ast.SwitchStmt) {
+	for _, c := range s.Body.List {
+		if c, ok := c.(*ast.CaseClause); ok && len(c.Body) == 0 {
+			pos := c.Colon
+			c.Body = []ast.Stmt{&ast.AssignStmt{
+				Lhs: []ast.Expr{&ast.Ident{Name: "_", NamePos: pos}}, TokPos: pos, Tok: token.ASSIGN, Rhs: []ast.Expr{number(pos, token.INT, "0")},
+			}}
+		}
+	}
+}
+
 // label moves the label of a statement that became a block to the statement in it that break means.
 func (l *lowering) label(c *astutil.Cursor, n *ast.LabeledStmt) {
 	block, ok := n.Stmt.(*ast.BlockStmt)

@@ -183,6 +183,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.IfStmt:
 		l.head(c, n, n.Init)
 	case *ast.SwitchStmt:
+		fillClauses(n)
 		l.head(c, n, n.Init)
 	case *ast.GoStmt:
 		c.Replace(l.goStmt(n))

@@ -49,7 +49,11 @@ func (l *lowering) findTyped(call *ast.CallExpr) {
 			continue
 		}
 		if fn.Name() == "Errorf" && types.Implements(t, errorType) {
-			continue // %w needs the error itself
+			// %w needs the error itself.
+			if types.IsInterface(t) {
+				continue
+			}
+			t = nil
 		}
 		if l.typed[call] == nil {
 			l.typed[call] = map[int]types.Type{}
@@ -105,7 +109,7 @@ func (l *lowering) wrapTyped(call *ast.CallExpr) {
 	for i, t := range l.typed[call] {
 		a := call.Args[i]
 		if t == nil {
-			// panic of a cell's error type: as an error, so that a recovered value is one.
+			// A cell's error type in a panic, where a recovered value is an error, or in an Errorf.
 			call.Args[i] = &ast.CallExpr{Fun: &ast.Ident{Name: asError, NamePos: a.Pos()}, Lparen: a.Pos(), Args: []ast.Expr{a}, Rparen: a.Pos()}
 			continue
 		}
