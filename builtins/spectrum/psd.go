@@ -142,8 +142,7 @@ func (p *PSD) repeat(ctx context.Context, levels []float64, symbols []int32) err
 	if err != nil {
 		return err
 	}
-	coef := p.coefficients(x)
-	lags, err := p.reach()
+	coef, lags, err := p.express(x)
 	if err != nil {
 		return err
 	}
@@ -161,8 +160,7 @@ func (p *PSD) analyse(ctx context.Context, ch *linecode.Chain) error {
 	if err != nil {
 		return err
 	}
-	coef := p.coefficients(x)
-	lags, err := p.reach()
+	coef, lags, err := p.express(x)
 	if err != nil {
 		return err
 	}
@@ -183,16 +181,18 @@ func (p *PSD) analyse(ctx context.Context, ch *linecode.Chain) error {
 	return nil
 }
 
-// coefficients expresses the waveforms through the basis, which it makes unless there is one pulse for all levels.
-func (p *PSD) coefficients(x *lexicon) (coef [][]float64) {
+// express gives the waveforms' coefficients in the basis, which it makes unless there is one pulse for all levels, and the
+// number of lags at which they may overlap.
+func (p *PSD) express(x *lexicon) (coef [][]float64, lags int, err error) {
 	if p.basis == nil {
 		p.basis, coef = waveforms(x.shapes)
-		return coef
+	} else {
+		for _, a := range x.levels {
+			coef = append(coef, []float64{a})
+		}
 	}
-	for _, a := range x.levels {
-		coef = append(coef, []float64{a})
-	}
-	return coef
+	lags, err = p.reach()
+	return coef, lags, err
 }
 
 // mostSymbols is the longest support of a waveform, in symbols.
