@@ -5,6 +5,7 @@
 //   - kernel.go, requests.go: channels and the table of requests
 //   - execute.go, output.go, record.go, ask.go, bundle.go: a cell and what it puts out
 //   - history.go: what was run
+//   - space.go: memory for cells that run long, and its return
 //
 // # What runs where
 //

@@ -41,7 +41,7 @@ func (k *kernel) work(life context.Context) {
 		k.mu.Lock()
 		k.cancel, k.idle = cancel, idle
 		k.mu.Unlock()
-		space := newSpace()
+		space := newSpace(&k.settled)
 		stop := k.execute(ctx, m)
 		space.end()
 		cancel(nil)

@@ -6,6 +6,7 @@ import (
 	"errors"
 	"fmt"
 	"runtime"
+	"runtime/debug"
 	"strings"
 	"testing"
 	"time"
@@ -340,6 +341,7 @@ func TestSpace(t *testing.T) {
 			return nil, nil
 		},
 		"long": func(context.Context, cell.Output) (*plotting.Bundle, error) {
+			runtime.GC() // of what other tests have left
 			until("a small heap", func() bool { return percent() >= 2*normal })
 			large := make([]byte, wide)
 			runtime.GC()
@@ -353,5 +355,26 @@ func TestSpace(t *testing.T) {
 	for _, code := range []string{"short", "long", "short"} {
 		c.execute(code, nil)
 		until("after "+code, func() bool { return percent() == normal })
+	}
+}
+
+// What a cell has used goes back to the system when it has ended.
+func TestMemoryGoesBack(t *testing.T) {
+	var used []byte
+	_, c := serve(t, &fake{cells: map[string]func(context.Context, cell.Output) (*plotting.Bundle, error){
+		"cell": func(context.Context, cell.Output) (*plotting.Bundle, error) {
+			used = make([]byte, 200<<20)
+			clear(used) // so that the system has to provide it
+			used = nil
+			return nil, nil
+		},
+	}})
+	debug.FreeOSMemory()
+	before := held()
+	c.execute("cell", nil)
+	for end := time.Now().Add(10 * time.Second); held() > before+100<<20; time.Sleep(time.Millisecond) {
+		if time.Now().After(end) {
+			t.Fatal("the kernel keeps the memory")
+		}
 	}
 }

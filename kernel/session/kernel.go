@@ -51,6 +51,7 @@ type kernel struct {
 	queue   *wire.Queue[*wire.Message] // execute requests
 	current atomic.Pointer[output]     // of the cell that runs or ran last
 	history history
+	settled atomic.Uint64 // bytes of the heap when memory was last given back
 
 	questions questions
 
