@@ -114,6 +114,7 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 	if numbered {
 		k.history.add(done)
 	}
+	last := k.count // of the cells that count: front ends number the next one after it
 
 	var content any
 	if err != nil {
@@ -131,10 +132,10 @@ func (k *kernel) execute(ctx context.Context, m *wire.Message) (stop []*wire.Mes
 		content = struct {
 			failed
 			Count int `json:"execution_count"`
-		}{f, n}
+		}{f, last}
 	} else {
 		content = map[string]any{
-			"status": "ok", "execution_count": n, "user_expressions": expressions, "payload": []any{},
+			"status": "ok", "execution_count": last, "user_expressions": expressions, "payload": []any{},
 		}
 	}
 	out.finish()

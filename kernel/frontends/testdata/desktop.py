@@ -56,7 +56,7 @@ def pictures():
 
 
 try:
-    prompt("[0-9]+")
+    prompt(1)
     enter('fmt.Println("levels", linecode.AMI().Levels())')
     until("text", lambda: "levels [-1 0 1]" in document.toPlainText())
     prompt(2)
