@@ -120,10 +120,10 @@ func card(c *linecode.Code) Bundle {
 	}
 	var text, table strings.Builder
 	text.WriteString(c.Name())
-	fmt.Fprintf(&table, `<table class="linewright"><caption style="text-align:left"><b>%s</b></caption>`, html.EscapeString(c.Name()))
+	fmt.Fprintf(&table, `<table class="linewright"><caption style="text-align:left;color:inherit"><b>%s</b></caption>`, html.EscapeString(c.Name()))
 	for _, f := range list {
 		fmt.Fprintf(&text, "\n  %-*s  %s", width, f.what, wrap(f.value, 76-width-4, width+4))
-		fmt.Fprintf(&table, "\n"+`<tr><th style="text-align:left;vertical-align:top;white-space:nowrap">%s</th><td style="text-align:left">%s</td></tr>`, html.EscapeString(f.what), html.EscapeString(f.value))
+		fmt.Fprintf(&table, "\n"+`<tr><th style="text-align:left;vertical-align:top;white-space:nowrap">%s</th><td style="text-align:left;color:inherit">%s</td></tr>`, html.EscapeString(f.what), html.EscapeString(f.value))
 	}
 	table.WriteString("</table>")
 	b := textBundle(text.String())

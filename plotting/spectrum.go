@@ -108,6 +108,7 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	legend := &names{avoid: stems.avoid}
 	labels := distinct(of)
 	var densities, powers []float64 // all that is finite, in the figure's unit
+	count := 0                      // of tones
 	for i, d := range of {
 		style := seriesStyle(i)
 		v := &curve{name: labels[i], xs: fs, ys: d.Density(nil, fs), style: style}
@@ -118,7 +119,9 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 			}
 		}
 		line := toneSeries{style: style, mark: markers[i%len(markers)]}
-		for _, tone := range d.Lines(upto) {
+		lines := d.Lines(upto)
+		count += len(lines)
+		for _, tone := range prominent(lines, upto) {
 			line.freqs = append(line.freqs, tone.Freq)
 			line.values = append(line.values, unit.value(d, tone.Power))
 		}
@@ -158,7 +161,7 @@ func newSpectrum(of []density, linear bool, upto float64) *SpectrumFigure {
 	p.Add(stems, legend) // stems over curves: many stand in a null, where every curve passes
 	s.fit = legend.fit
 	s.curves, s.stems, s.legend = legend.curves, stems, legend
-	s.Alt = s.alt(len(powers))
+	s.Alt = s.alt(count)
 	return s
 }
 

@@ -224,3 +224,27 @@ func TestSpectrumNames(t *testing.T) {
 	}
 	checkLayout(t, newSpectrum(many, false, 3e6).Figure)
 }
+
+// Of very many tones the highest in each place on the axis are kept, and only those.
+func TestProminent(t *testing.T) {
+	lines := make([]spectrum.Line, 10*tonePlaces)
+	for i := range lines {
+		lines[i] = spectrum.Line{Freq: float64(i) / float64(len(lines)), Power: float64(i % 7)}
+	}
+	kept := prominent(lines, 1)
+	if len(kept) != tonePlaces {
+		t.Fatalf("%d of %d lines kept, want %d", len(kept), len(lines), tonePlaces)
+	}
+	for i, l := range kept {
+		if place := math.Floor(l.Freq * tonePlaces); place != float64(i) {
+			t.Fatalf("line %d stands in place %v", i, place)
+		}
+		if l.Power != 6 { // ten neighbours hold every remainder of 7
+			t.Fatalf("line %d has power %v, not that of the highest", i, l.Power)
+		}
+	}
+	few := lines[:100]
+	if got := prominent(few, 1); len(got) != len(few) {
+		t.Errorf("%d of %d lines kept", len(got), len(few))
+	}
+}

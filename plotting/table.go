@@ -194,7 +194,7 @@ func index(i int, gap string) string {
 type tableWriter struct{ strings.Builder }
 
 func (t *tableWriter) start(caption string) {
-	t.WriteString(`<table class="linewright"><caption style="text-align:left">` + html.EscapeString(caption) + `</caption><tr>`)
+	t.WriteString(`<table class="linewright"><caption style="text-align:left;color:inherit">` + html.EscapeString(caption) + `</caption><tr>`)
 }
 func (t *tableWriter) row() { t.WriteString("</tr>\n<tr>") }
 func (t *tableWriter) head(s string) {

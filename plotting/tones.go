@@ -10,6 +10,7 @@ import (
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 
+	"linewright/builtins/spectrum"
 	"linewright/plotting/internal/canvas"
 )
 
@@ -31,6 +32,30 @@ type toneSeries struct {
 	freqs, values []float64 // values in the axis's unit
 	style         draw.LineStyle
 	mark          draw.GlyphDrawer
+}
+
+// tonePlaces is the number of places on the frequency axis, several a pixel, that can each show one tone of a series.
+const tonePlaces = 1 << 14
+
+// prominent returns the highest of the lines in each place on the axis from 0 to upto, all if they are no more than there
+// are places: data that repeat after a million bits have millions of them.
+func prominent(lines []spectrum.Line, upto float64) []spectrum.Line {
+	if len(lines) <= tonePlaces {
+		return lines
+	}
+	var out []spectrum.Line
+	last := -1.0
+	for _, l := range lines {
+		place := math.Floor(l.Freq / upto * tonePlaces)
+		switch {
+		case place != last:
+			out = append(out, l)
+			last = place
+		case l.Power > out[len(out)-1].Power:
+			out[len(out)-1] = l
+		}
+	}
+	return out
 }
 
 // A stem is one tone on the canvas.
