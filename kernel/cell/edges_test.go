@@ -43,6 +43,10 @@ func TestEdges(t *testing.T) {
 			"func f() int { return 1 }\nfunc g() int { return f() + 10 }\nfunc h() int { return g() + 100 }", "", "h()", "111", "func f() int { return 2 }", "", "h()", "112",
 			"func f() string { return \"s\" }", "", "g()", "12", "f()", "s",
 		}},
+		{"4 a variable in the place of a function or type", []string{
+			"func f() int { return 1 }\nfunc g() int { return f() + 10 }\ntype T struct{ a int }\nfunc (t T) M() int { return t.a }\nt := T{3}", "",
+			"f := 2.5\nT := 7\nfmt.Println(f, T, g(), t.M())", "2.5 7 11 3\n", "func f() int { return 2 }\ng()", "12",
+		}},
 		{"4 methods see a redefined function", []string{
 			"func f() int { return 1 }\ntype T int\nfunc (t T) M() int { return f() + int(t) }\nx := T(10)\nfunc use() int { return x.M() }", "", "use()", "11", "func f() int { return 2 }", "", "use()", "12",
 			"const k = 3\nfunc g() int { return k }", "", "const k = 4", "", "g()", "4",

@@ -224,6 +224,10 @@ func (in *Interpreter) dependants(src *source, p *plan) {
 			own[n] = true
 		}
 	}
+	variables := map[string]bool{} // what had these names is gone, with its methods
+	for _, id := range src.variables() {
+		variables[id.Name] = true
+	}
 	replaced := maps.Clone(p.replaced)
 	p.decls = append([]*decl(nil), p.own...)
 	taken := map[*decl]bool{}
@@ -231,14 +235,14 @@ func (in *Interpreter) dependants(src *source, p *plan) {
 		again = false
 		for _, key := range sorted(in.names) {
 			e := in.names[key]
-			if e.decl == nil || taken[e.decl] || own[key] || p.kept[key] {
+			typ, _, isMethod := strings.Cut(key, ".")
+			if e.decl == nil || taken[e.decl] || own[key] || p.kept[key] || variables[typ] {
 				continue
 			}
 			need := replaced[key]
 			for used := range e.uses {
 				need = need || replaced[used]
 			}
-			typ, _, isMethod := strings.Cut(key, ".")
 			if isMethod && replaced[typ] {
 				// The methods of a type that is declared anew go with it; those that stood in its old cell were left out on purpose.
 				t := in.names[typ]

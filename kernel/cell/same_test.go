@@ -15,13 +15,14 @@ import (
 	"golang.org/x/tools/txtar"
 )
 
-var update = flag.Bool("update", false, "generate the programs of testdata/same anew and run all of them with the go command")
+var update = flag.Bool("update", false, "run the programs of testdata/same with the go command and store what they print")
 
 // generated is the number of programs that come from the generator.
 const generated = 300
 
-// A cell prints what the same program prints that the go command has compiled. The programs are pairs NAME.cell and
-// NAME.out.SUM in the archives of testdata/same; SUM says of which text the output is. Option -update writes the outputs.
+// A cell prints what the same program prints that the go command has compiled. The programs written by hand are pairs
+// NAME.cell and NAME.out.SUM in an archive of testdata/same, of those that the generator makes there is only the output; SUM
+// says of which text. Option -update writes the outputs.
 func TestSame(t *testing.T) {
 	if *update {
 		updateSame(t)
@@ -38,23 +39,19 @@ func TestSame(t *testing.T) {
 		t.Run(strings.TrimSuffix(filepath.Base(file), ".txtar"), func(t *testing.T) {
 			t.Parallel()
 			s := start(t)
-			for _, f := range a.Files {
-				name, ok := strings.CutSuffix(f.Name, ".cell")
+			for _, p := range samePrograms(file, a) {
+				want, ok := outputs[p.output()]
 				if !ok {
+					t.Errorf("%s has changed since it was run; run go test -run TestSame -update", p.name)
 					continue
 				}
-				want, ok := outputs[outputName(name, f.Data)]
-				if !ok {
-					t.Errorf("%s has changed since it was run; run go test -run TestSame -update", name)
-					continue
-				}
-				_, err := s.run(string(f.Data))
+				_, err := s.run(p.text)
 				got := s.out.stdout.String()
 				if err != nil {
 					got += panicLine(err)
 				}
 				if strings.TrimSuffix(got, "\n") != strings.TrimSuffix(want, "\n") {
-					t.Errorf("%s\n%sprints\n%s\nas a cell, and compiled\n%s%s", name, f.Data, got, want, strings.Join(trace(err), "\n"))
+					t.Errorf("%s\n%sprints\n%s\nas a cell, and compiled\n%s%s", p.name, p.text, got, want, strings.Join(trace(err), "\n"))
 				}
 			}
 		})
@@ -82,20 +79,34 @@ func sameArchives(t *testing.T) []string {
 	return files
 }
 
-func outputName(name string, text []byte) string {
-	return fmt.Sprintf("%s.out.%x", name, sha256.Sum256(text))[:len(name)+13]
+// samePair is a program and, in its archive, its output.
+type samePair struct{ name, text string }
+
+func (p samePair) output() string {
+	return fmt.Sprintf("%s.out.%x", p.name, sha256.Sum256([]byte(p.text)))[:len(p.name)+13]
 }
 
-// updateSame writes the generated programs, compiles all programs into one command and stores what each prints.
+const generatedFile = "generated.txtar"
+
+// samePrograms returns the programs of an archive.
+func samePrograms(file string, a *txtar.Archive) []samePair {
+	var list []samePair
+	if filepath.Base(file) == generatedFile {
+		for i := range generated {
+			list = append(list, samePair{fmt.Sprintf("p%03d", i), sameProgram(uint64(i))})
+		}
+	}
+	for _, f := range a.Files {
+		if name, ok := strings.CutSuffix(f.Name, ".cell"); ok {
+			list = append(list, samePair{name, string(f.Data)})
+		}
+	}
+	return list
+}
+
+// updateSame compiles all programs into one command and stores what each prints.
 func updateSame(t *testing.T) {
 	t.Helper()
-	made := &txtar.Archive{Comment: []byte("Programs of the generator in same_generate_test.go.\n\n")}
-	for i := range generated {
-		made.Files = append(made.Files, txtar.File{Name: fmt.Sprintf("p%03d.cell", i), Data: []byte(sameProgram(uint64(i)))})
-	}
-	if err := os.WriteFile(filepath.Join("testdata", "same", "generated.txtar"), txtar.Format(made), 0o644); err != nil {
-		t.Fatal(err)
-	}
 	dir := t.TempDir()
 	write := func(name, text string) {
 		t.Helper()
@@ -116,13 +127,11 @@ func updateSame(t *testing.T) {
 			t.Fatal(err)
 		}
 		archives[file] = a
-		for _, f := range a.Files {
-			if strings.HasSuffix(f.Name, ".cell") {
-				write(fmt.Sprintf("p%d/p.go", n), goProgram(n, string(f.Data)))
-				fmt.Fprintf(&imports, "\t\"same/p%d\"\n", n)
-				fmt.Fprintf(&calls, "\trun(p%d.Run)\n", n)
-				n++
-			}
+		for _, p := range samePrograms(file, a) {
+			write(fmt.Sprintf("p%d/p.go", n), goProgram(n, p.text))
+			fmt.Fprintf(&imports, "\t\"same/p%d\"\n", n)
+			fmt.Fprintf(&calls, "\trun(p%d.Run)\n", n)
+			n++
 		}
 	}
 	write("go.mod", "module same\n\ngo 1.26\n")
@@ -156,11 +165,12 @@ func main() {
 	for _, file := range sameArchives(t) {
 		a := archives[file]
 		fresh := &txtar.Archive{Comment: a.Comment}
-		for _, f := range a.Files {
-			if name, ok := strings.CutSuffix(f.Name, ".cell"); ok {
-				fresh.Files = append(fresh.Files, f, txtar.File{Name: outputName(name, f.Data), Data: []byte(outputs[n])})
-				n++
+		for _, p := range samePrograms(file, a) {
+			if filepath.Base(file) != generatedFile {
+				fresh.Files = append(fresh.Files, txtar.File{Name: p.name + ".cell", Data: []byte(p.text)})
 			}
+			fresh.Files = append(fresh.Files, txtar.File{Name: p.output(), Data: []byte(outputs[n])})
+			n++
 		}
 		if err := os.WriteFile(file, txtar.Format(fresh), 0o644); err != nil {
 			t.Fatal(err)
@@ -168,14 +178,17 @@ func main() {
 	}
 }
 
-// goProgram makes a package of a cell: its statements become function Run.
+// goProgram makes a package of a cell: its statements become function Run, but for variables before all others, which its
+// functions may use.
 func goProgram(n int, text string) string {
 	var imports, decls, statements strings.Builder
 	for _, c := range split(text) {
 		b := &decls
 		switch c.kind {
 		case token.ILLEGAL:
-			b = &statements
+			if statements.Len() > 0 || !strings.HasPrefix(text[c.start:], "var ") {
+				b = &statements
+			}
 		case token.IMPORT:
 			b = &imports
 		}
