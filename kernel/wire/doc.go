@@ -28,5 +28,6 @@
 //   - it costs the memory of what it has sent, never of what it announces, and no message exceeds the channel's limit;
 //   - commands never reach the application: PING is answered, SUBSCRIBE and CANCEL become subscriptions;
 //   - it may fall behind by 64 MB (plus the message that crosses the line); after that the broadcast waits for it as long
-//     as it takes at least 4 MB a second, and then it is dropped. On the other channels it is dropped at once.
+//     as it takes at least 4 MB a second, and then it is dropped. On the other channels it is dropped at once, and on the
+//     heartbeat, which is answered without zmq4, after a second in which it takes nothing.
 package wire
