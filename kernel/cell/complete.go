@@ -13,7 +13,7 @@ import (
 type Completion struct {
 	Start, End int // the part of the code that a match replaces, in code points
 	Matches    []string
-	Types      []string // beside Matches: "function", "module", "class", "instance", "keyword", "path"
+	Types      []string // beside Matches: "function", "module", "class", "instance", "keyword", "path", "value"
 	Signatures []string // beside Matches
 }
 
@@ -41,6 +41,8 @@ func (in *Interpreter) Complete(code string, cursor int) Completion {
 	if from, ok := importPath(code[:offset]); ok {
 		start = from
 		list = in.pathCandidates()
+	} else if from, names := in.knownValues(code[:offset]); names != nil {
+		start, list = from, names
 	} else if !inComment(code[:offset]) {
 		in.types.Lock()
 		list = in.candidates(code, start, offset)
@@ -108,6 +110,35 @@ func (in *Interpreter) pathCandidates() []candidate {
 	return list
 }
 
+// knownValues returns the values of a string argument, in which a text ends, and where it starts: the names that a function
+// ByName takes are what function Names of its package lists.
+func (in *Interpreter) knownValues(text string) (start int, list []candidate) {
+	line := text[strings.LastIndexByte(text, '\n')+1:]
+	quote := strings.LastIndexByte(line, '"')
+	if quote < 0 || strings.Count(line[:quote], `"`)%2 == 1 {
+		return 0, nil
+	}
+	start = len(text) - len(line) + quote + 1
+	end, argument := callee(text[:start-1])
+	if end < 0 || argument > 0 || !strings.HasSuffix(text[:end], "ByName") {
+		return 0, nil
+	}
+	in.types.Lock()
+	defer in.types.Unlock()
+	fn, _ := in.objectAt(text[:end])
+	if fn == nil || fn.Pkg() == nil {
+		return 0, nil
+	}
+	names, ok := in.vm.symbol(fn.Pkg().Path(), "Names").(func() []string)
+	if !ok {
+		return 0, nil
+	}
+	for _, n := range names() {
+		list = append(list, candidate{name: n, kind: "value"})
+	}
+	return start, list
+}
+
 // inComment reports whether a text ends in a comment or a string, where there is nothing to complete.
 func inComment(text string) bool {
 	line := text[strings.LastIndexByte(text, '\n')+1:]
@@ -142,13 +173,19 @@ func (in *Interpreter) candidates(code string, start, offset int) []candidate {
 				list = p.members(n.X)
 			}
 		case *ast.CompositeLit:
+			given := map[string]bool{}
+			at := false
 			for _, e := range n.Elts {
 				if kv, ok := e.(*ast.KeyValueExpr); ok {
 					e = kv.Key
 				}
-				if id, ok := e.(*ast.Ident); ok && id.Name == cursorName {
-					list = append(list, fieldsOf(p.info.TypeOf(n))...)
+				if id, ok := e.(*ast.Ident); ok {
+					given[id.Name] = true
+					at = at || id.Name == cursorName
 				}
+			}
+			if at {
+				list = append(list, slices.DeleteFunc(keys(p.info.TypeOf(n)), func(c candidate) bool { return given[c.name] })...)
 			}
 		}
 		return true
@@ -201,6 +238,25 @@ func fieldsAndMethods(t types.Type, onlyMethods bool) []candidate {
 	}
 	if !onlyMethods {
 		list = append(list, fieldsOf(t)...)
+	}
+	return list
+}
+
+// keys returns the fields that a literal of a struct type can give.
+func keys(t types.Type) []candidate {
+	if t == nil {
+		return nil
+	}
+	if ptr, ok := t.Underlying().(*types.Pointer); ok { // an element of a literal of pointers
+		t = ptr.Elem()
+	}
+	var list []candidate
+	if s, ok := t.Underlying().(*types.Struct); ok {
+		for f := range s.Fields() {
+			if visibleMember(f) {
+				list = append(list, describe(f, nearField))
+			}
+		}
 	}
 	return list
 }

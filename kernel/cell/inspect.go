@@ -13,21 +13,50 @@ import (
 )
 
 // Inspect says what the name at the cursor, which counts code points, is: its declaration and its comment, with detail 1 and
-// more also the source of what a cell declared. Between the brackets of a call it is the function's name. It may be called
-// while a cell runs.
+// more also the source of what a cell declared. Between the brackets of a call it is the function's name, and which of its
+// parameters the cursor is at is said too. It may be called while a cell runs.
 func (in *Interpreter) Inspect(code string, cursor, detail int) (plotting.Bundle, bool) {
 	offset := byteOffset(code, cursor)
 	in.types.Lock()
 	defer in.types.Unlock()
-	for _, end := range []int{wordAt(code, offset), callee(code[:offset])} {
-		if end < 0 {
-			continue
-		}
+	if end := wordAt(code, offset); end >= 0 {
 		if o, owner := in.objectAt(code[:end]); o != nil {
-			return in.about(o, owner, detail), true
+			return in.about(o, owner, "", detail), true
+		}
+	}
+	if end, argument := callee(code[:offset]); end >= 0 {
+		if o, owner := in.objectAt(code[:end]); o != nil {
+			return in.about(o, owner, parameter(o.Type(), argument), detail), true
 		}
 	}
 	return plotting.Bundle{}, false
+}
+
+// parameter says which parameter of a function an argument is for; nothing where there is none.
+func parameter(t types.Type, argument int) string {
+	if t == nil {
+		return ""
+	}
+	sig, ok := t.Underlying().(*types.Signature)
+	if !ok {
+		return ""
+	}
+	n := sig.Params().Len()
+	if sig.Variadic() {
+		argument = min(argument, n-1)
+	}
+	if argument >= n {
+		return ""
+	}
+	v := sig.Params().At(argument)
+	text := types.TypeString(v.Type(), brief)
+	if sig.Variadic() && argument == n-1 {
+		text = "..." + strings.TrimPrefix(text, "[]")
+	}
+	if v.Name() != "" {
+		text = v.Name() + " " + text
+	}
+	return fmt.Sprintf("parameter %d of %d: %s", argument+1, n, text)
 }
 
 // wordAt returns the end of the identifier around or before a place, or -1.
@@ -39,23 +68,54 @@ func wordAt(code string, offset int) int {
 	return end
 }
 
-// callee returns the end of the function's name in whose brackets a text ends, or -1.
-func callee(text string) int {
+// callee returns the end of the function's name in whose brackets a text ends, or -1, and the number of the argument there,
+// from 0.
+func callee(text string) (end, argument int) {
 	items := tokens(text)
-	depth := 0
+	depth := 0 // below zero by as many brackets as are open
 	for i := len(items) - 1; i > 0; i-- {
 		switch items[i].tok {
 		case token.RPAREN, token.RBRACE, token.RBRACK:
 			depth++
 		case token.LBRACE, token.LBRACK:
 			depth--
+		case token.COMMA:
+			if depth == 0 {
+				argument++
+			}
 		case token.LPAREN:
-			if depth--; depth < 0 && items[i-1].tok == token.IDENT {
-				return items[i-1].end
+			if depth--; depth < 0 {
+				if end := nameBefore(items[:i]); end >= 0 {
+					return end, argument
+				}
+			}
+		}
+		if depth < 0 { // what is open here is one argument of what is open around it
+			depth, argument = 0, 0
+		}
+	}
+	return -1, 0
+}
+
+// nameBefore returns the end of the name in which tokens end, type arguments left out, or -1.
+func nameBefore(items []item) int {
+	last := len(items) - 1
+	if last >= 0 && items[last].tok == token.RBRACK {
+		for depth := 0; last >= 0; last-- {
+			if items[last].tok == token.RBRACK {
+				depth++
+			} else if items[last].tok == token.LBRACK {
+				if depth--; depth == 0 {
+					last--
+					break
+				}
 			}
 		}
 	}
-	return -1
+	if last < 0 || items[last].tok != token.IDENT {
+		return -1
+	}
+	return items[last].end
 }
 
 // objectAt returns what the identifier at the end of a text stands for, and for a field or method the type that it was
@@ -99,8 +159,8 @@ func (in *Interpreter) objectAt(text string) (types.Object, types.Type) {
 	return types.Universe.Lookup(name), nil
 }
 
-// about describes an object as text and HTML.
-func (in *Interpreter) about(o types.Object, owner types.Type, detail int) plotting.Bundle {
+// about describes an object as text and HTML, with a note under its declaration.
+func (in *Interpreter) about(o types.Object, owner types.Type, note string, detail int) plotting.Bundle {
 	head := in.declaration(o, owner)
 	text := in.comment(o, owner)
 	source := ""
@@ -110,6 +170,10 @@ func (in *Interpreter) about(o types.Object, owner types.Type, detail int) plott
 	var plainText, rich strings.Builder
 	plainText.WriteString(head)
 	fmt.Fprintf(&rich, "<pre>%s</pre>\n", html.EscapeString(head))
+	if note != "" {
+		plainText.WriteString("\n" + note)
+		fmt.Fprintf(&rich, "<p>%s</p>\n", html.EscapeString(note))
+	}
 	if text != "" {
 		doc := new(comment.Parser).Parse(text)
 		printer := &comment.Printer{TextWidth: 90, DocLinkURL: func(*comment.DocLink) string { return "" }}

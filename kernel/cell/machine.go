@@ -180,15 +180,26 @@ func (m *machine) forget() {
 }
 
 // has reports whether the symbol tables have the name of that package.
-func (m *machine) has(path, name string) bool {
+func (m *machine) has(path, name string) bool { return m.find(path, name).IsValid() }
+
+// symbol returns the function of that name of a package, or nil.
+func (m *machine) symbol(path, name string) any {
+	if v := m.find(path, name); v.Kind() == reflect.Func {
+		return v.Interface()
+	}
+	return nil
+}
+
+// find looks a name of a package up in the symbol tables.
+func (m *machine) find(path, name string) reflect.Value {
 	key := path + "/" + path[strings.LastIndexByte(path, '/')+1:]
 	if path == "math/rand/v2" {
 		key = path + "/rand"
 	}
 	for _, table := range m.tables {
-		if _, ok := table[key][name]; ok {
-			return true
+		if v, ok := table[key][name]; ok {
+			return v
 		}
 	}
-	return false
+	return reflect.Value{}
 }
