@@ -450,3 +450,36 @@ func TestIdentityLikeTheDelimiter(t *testing.T) {
 		t.Errorf("reply %q", m)
 	}
 }
+
+// A thousand clients that come, ask, and go, half of them without a word, leave neither descriptors nor goroutines.
+func TestThousandClients(t *testing.T) {
+	s, _ := listen(t, tcp())
+	mirror(s)
+	ask(t, dialServer(t, s), `{}`)
+	before := runtime.NumGoroutine()
+	for i := range 1000 {
+		sub := greeted(t, s, IOPub, zmq4.Sub, "")
+		p := greeted(t, s, Shell, zmq4.Dealer, fmt.Sprint("client ", i))
+		if i%2 == 0 {
+			sub.send(wireFrame(0, "\x01"))
+			p.send(signed(t, s, `{}`))
+			if m := p.message(); string(m[len(m)-1]) != `{}` {
+				t.Fatalf("client %d: reply %q", i, m)
+			}
+		}
+		sub.Close()
+		p.Close()
+	}
+	left := func() (connections int) {
+		for _, d := range s.doors {
+			connections += len(d.present())
+		}
+		return connections
+	}
+	for end := time.Now().Add(10 * time.Second); left() > 4 || runtime.NumGoroutine() > before; time.Sleep(time.Millisecond) {
+		if time.Now().After(end) {
+			t.Fatalf("%d connections and %d goroutines, want the 4 of one client and %d", left(), runtime.NumGoroutine(), before)
+		}
+	}
+	ask(t, dialServer(t, s), `{}`)
+}
