@@ -159,6 +159,8 @@ func (in *Interpreter) hooks() interp.Exports {
 			"Refuse":    reflect.ValueOf(refuse),
 			"NotA":      reflect.ValueOf(notA),
 			"Equal":     reflect.ValueOf(in.equal),
+			"Runes":     reflect.ValueOf(func(s string) []rune { return []rune(s) }),
+			"Starts":    reflect.ValueOf(starts),
 			"Complex":   reflect.ValueOf(func(re, im float64) complex128 { return complex(re, im) }),
 			"Clear":     reflect.ValueOf(func(v any) { reflect.ValueOf(v).Clear() }),
 			"MinInt":    reflect.ValueOf(least[int64]),

@@ -190,15 +190,24 @@ func (l *lowering) rangeStmt(n *ast.RangeStmt, label string) ast.Stmt {
 		if u.Info()&types.IsInteger != 0 {
 			return l.rangeInt(n, t)
 		}
+		return l.rangeString(n)
 	case *types.Signature:
 		return l.rangeFunc(n, label)
+	case *types.Pointer:
+		// The interpreter takes the wrong type for the elements of a pointer's array.
+		n.X = &ast.SliceExpr{X: n.X, Lbrack: n.X.End(), Rbrack: n.X.End()}
 	}
 	if n.Tok == token.ASSIGN {
 		l.rangeAssign(n)
 	}
-	if n.Tok != token.DEFINE {
-		return nil
+	if n.Tok == token.DEFINE {
+		l.copyCaptured(n)
 	}
+	return nil
+}
+
+// copyCaptured gives each turn of a range its own copies of the variables that its body captures.
+func (l *lowering) copyCaptured(n *ast.RangeStmt) {
 	vars := map[types.Object]bool{}
 	for _, x := range []ast.Expr{n.Key, n.Value} {
 		if id, ok := x.(*ast.Ident); ok && l.u.info.Defs[id] != nil {
@@ -217,7 +226,45 @@ func (l *lowering) rangeStmt(n *ast.RangeStmt, label string) ast.Stmt {
 		copies = append(copies, assign(n.Body.Lbrace, token.DEFINE, name, id.Name))
 	}
 	n.Body.List = append(copies, n.Body.List...)
-	return nil
+}
+
+// rangeString ranges over a string's code points as a slice: the interpreter takes each byte that is no UTF-8 for three.
+func (l *lowering) rangeString(n *ast.RangeStmt) ast.Stmt {
+	if n.Tok == token.ASSIGN {
+		l.rangeAssign(n)
+	}
+	pos := n.Pos()
+	text := l.temp(pos)
+	again := func() ast.Expr { return &ast.Ident{Name: text.Name, NamePos: pos} }
+	block := &ast.BlockStmt{Lbrace: pos, Rbrace: n.End(), List: []ast.Stmt{
+		&ast.AssignStmt{Lhs: []ast.Expr{text}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{
+			&ast.CallExpr{Fun: &ast.Ident{Name: "string", NamePos: pos}, Lparen: pos, Args: []ast.Expr{n.X}, Rparen: pos},
+		}},
+	}}
+	if id, ok := n.Key.(*ast.Ident); ok && id.Name != "_" {
+		starts, at := l.temp(pos), l.temp(pos)
+		block.List = append(block.List, &ast.AssignStmt{Lhs: []ast.Expr{starts}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{l.hook("Starts", pos, again())}})
+		n.Body.List = append([]ast.Stmt{&ast.AssignStmt{Lhs: []ast.Expr{id}, TokPos: pos, Tok: token.DEFINE, Rhs: []ast.Expr{
+			&ast.IndexExpr{X: &ast.Ident{Name: starts.Name, NamePos: pos}, Lbrack: pos, Index: &ast.Ident{Name: at.Name, NamePos: pos}, Rbrack: pos},
+		}}}, n.Body.List...)
+		n.Key = at
+	}
+	n.X = l.hook("Runes", pos, again())
+	if n.Tok == token.DEFINE {
+		l.copyCaptured(n)
+	}
+	block.List = append(block.List, n)
+	l.hoisted[block] = true
+	return block
+}
+
+// starts returns where the code points of a string start.
+func starts(s string) []int {
+	list := make([]int, 0, len(s))
+	for i := range s {
+		list = append(list, i)
+	}
+	return list
 }
 
 // rangeAssign makes a range that assigns to variables, which the interpreter forgets to do, one that declares some.

@@ -165,6 +165,8 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 	case *ast.SelectorExpr:
 		l.methodExpr(c, n)
 		l.methodValue(c, n)
+	case *ast.IndexExpr:
+		l.arrayOf(n)
 	case *ast.CallExpr:
 		l.wrapTyped(n)
 		if tv := l.u.info.Types[n.Fun]; tv.IsType() && len(n.Args) == 1 {
@@ -217,6 +219,21 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		l.label(c, n)
 	}
 	return true
+}
+
+// arrayOf writes the dereference of a pointer to an array in an index: without it the interpreter loses track of an element
+// of an element.
+func (l *lowering) arrayOf(n *ast.IndexExpr) {
+	t := l.u.info.TypeOf(n.X)
+	if t == nil {
+		return
+	}
+	if p, ok := t.Underlying().(*types.Pointer); ok {
+		star := &ast.StarExpr{Star: n.X.Pos(), X: n.X}
+		l.u.info.Types[star] = types.TypeAndValue{Type: p.Elem()}
+		n.X = &ast.ParenExpr{Lparen: n.X.Pos(), X: star, Rparen: n.X.End()}
+		l.u.info.Types[n.X] = types.TypeAndValue{Type: p.Elem()}
+	}
 }
 
 // convertToAny makes the conversion of a paired type to any one by a function: by itself it loses the type.
