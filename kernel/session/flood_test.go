@@ -16,6 +16,9 @@ import (
 	"linewright/kernel/wire"
 )
 
+// raceDetector is true in tests with the race detector.
+var raceDetector bool
+
 // subscribe connects to a kernel's broadcast byte by byte, as ZMTP 3.0 has it (RFC 23 of the ZeroMQ project), so that a
 // test decides when anything is read. The welcome has been read.
 func subscribe(t *testing.T, c wire.Connection) net.Conn {
@@ -117,7 +120,7 @@ func TestFlood(t *testing.T) {
 		}
 		equal(t, "status", decode(t, p.answer(wire.Shell, id))["status"], `"ok"`)
 	}
-	if peak := memory(t, p.cmd.Process.Pid, "VmHWM"); peak > most {
+	if peak := memory(t, p.cmd.Process.Pid, "VmHWM"); peak > most && !raceDetector { // which takes several times as much
 		t.Errorf("the kernel took %d MB, want %d at most", peak, most)
 	} else {
 		t.Logf("the kernel took %d MB", peak)
