@@ -126,7 +126,7 @@ func (l *lowering) callsIn(list []ast.Expr) bool {
 	return found
 }
 
-// head evaluates the values of v, w := f(), g() in the head of an if, switch or for before the statement, which becomes a
+// head evaluates the values of v, w := f(), g() in the head of an if or for before the statement, which becomes a
 // block: the interpreter loses the results of calls there.
 func (l *lowering) head(c *astutil.Cursor, s ast.Stmt, init ast.Stmt) {
 	a, ok := init.(*ast.AssignStmt)
@@ -138,6 +138,23 @@ func (l *lowering) head(c *astutil.Cursor, s ast.Stmt, init ast.Stmt) {
 		a.Rhs[i] = l.keep(&block.List, x)
 	}
 	block.List = append(block.List, s)
+	l.hoisted[block] = true
+	c.Replace(block)
+}
+
+// switchHead puts what a switch declares before it, both into a block: the interpreter loses the value that is switched on.
+func (l *lowering) switchHead(c *astutil.Cursor, n *ast.SwitchStmt) {
+	if n.Init == nil {
+		return
+	}
+	block := &ast.BlockStmt{Lbrace: n.Pos(), Rbrace: n.End()}
+	if a, ok := n.Init.(*ast.AssignStmt); ok && a.Tok == token.DEFINE && len(a.Lhs) > 1 && len(a.Lhs) == len(a.Rhs) {
+		for i, x := range a.Rhs {
+			a.Rhs[i] = l.keep(&block.List, x)
+		}
+	}
+	block.List = append(block.List, n.Init, n)
+	n.Init = nil
 	l.hoisted[block] = true
 	c.Replace(block)
 }

@@ -3,6 +3,7 @@ package cell
 import (
 	"fmt"
 	"go/ast"
+	"go/constant"
 	"go/token"
 	"go/types"
 
@@ -37,6 +38,8 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		l.noRecover(n.Call)
 	case *ast.CommClause:
 		l.comms[n.Comm] = true
+	case *ast.CompositeLit:
+		l.literalKeys(n)
 	case *ast.MapType:
 		if t := l.u.info.TypeOf(n.Key); t != nil {
 			if i, ok := t.Underlying().(*types.Interface); ok && !i.Empty() && !l.ofCompiled(t) {
@@ -104,6 +107,27 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 func isSequence(t types.Type) bool {
 	n, ok := t.(*types.Named)
 	return ok && n.Obj().Pkg() != nil && n.Obj().Pkg().Path() == "iter"
+}
+
+// literalKeys writes the indices in an array's or slice's literal as plain numbers: to the interpreter a conversion is no
+// constant.
+func (l *lowering) literalKeys(n *ast.CompositeLit) {
+	t := l.u.info.TypeOf(n)
+	if t == nil {
+		return
+	}
+	switch t.Underlying().(type) {
+	case *types.Array, *types.Slice:
+	default:
+		return
+	}
+	for _, e := range n.Elts {
+		if kv, ok := e.(*ast.KeyValueExpr); ok {
+			if v := l.u.info.Types[kv.Key].Value; v != nil {
+				kv.Key = number(kv.Key.Pos(), token.INT, constant.ToInt(v).ExactString())
+			}
+		}
+	}
 }
 
 // replace replaces an expression by one that takes over its type, since what lies around it is lowered later.
@@ -186,7 +210,7 @@ func (l *lowering) after(c *astutil.Cursor) bool {
 		l.head(c, n, n.Init)
 	case *ast.SwitchStmt:
 		fillClauses(n)
-		l.head(c, n, n.Init)
+		l.switchHead(c, n)
 	case *ast.GoStmt:
 		c.Replace(l.goStmt(n))
 	case *ast.DeferStmt:

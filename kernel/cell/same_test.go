@@ -192,7 +192,7 @@ func goProgram(n int, text string) string {
 		case token.IMPORT:
 			b = &imports
 		}
-		b.WriteString(strings.TrimRight(text[c.start:c.end], ";\n") + "\n")
+		b.WriteString(strings.TrimRight(text[c.start:c.end], "\n") + "\n")
 	}
 	return fmt.Sprintf("package p%d\n\nimport \"fmt\"\n%s\nvar _ = fmt.Print\n\n%s\nfunc Run() {\n%s}\n", n, &imports, &decls, &statements)
 }
