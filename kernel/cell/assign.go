@@ -34,6 +34,7 @@ func (l *lowering) keep(list *[]ast.Stmt, x ast.Expr) ast.Expr {
 
 // parallel turns a, b = x, y into t, u := x, y; a = t; b = u, with the operands of targets evaluated first.
 func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
+	l.nameBlank(s)
 	if len(s.Rhs) == 1 && s.Tok == token.ASSIGN {
 		l.several(c, s)
 		return
@@ -66,16 +67,32 @@ func (l *lowering) parallel(c *astutil.Cursor, s *ast.AssignStmt) {
 	}
 }
 
+// nameBlank names the value that _, ok := <-c throws away: the interpreter would put it into ok.
+func (l *lowering) nameBlank(s *ast.AssignStmt) {
+	if len(s.Lhs) != 2 || len(s.Rhs) != 1 || l.comms[s] {
+		return
+	}
+	if other, ok := s.Lhs[1].(*ast.Ident); ok && other.Name == "_" {
+		return
+	}
+	id, blank := s.Lhs[0].(*ast.Ident)
+	u, receive := ast.Unparen(s.Rhs[0]).(*ast.UnaryExpr)
+	if blank && id.Name == "_" && receive && u.Op == token.ARROW {
+		s.Lhs[0] = l.temp(id.Pos())
+	}
+}
+
 // several gives the values of one expression to targets by way of variables: if there are several and not all are plain
 // variables, and if it is a call of a cell's function, which would write its results where the targets are while it runs.
 func (l *lowering) several(c *astutil.Cursor, s *ast.AssignStmt) {
 	elements := slices.ContainsFunc(s.Lhs, func(x ast.Expr) bool { _, ok := x.(*ast.Ident); return !ok })
-	if !(len(s.Lhs) > 1 && elements) && !l.callsCell(s.Rhs[0]) {
+	unnamed := slices.ContainsFunc(s.Lhs, func(x ast.Expr) bool { id, ok := x.(*ast.Ident); return ok && l.made(id) })
+	if !(len(s.Lhs) > 1 && (elements || unnamed)) && !l.callsCell(s.Rhs[0]) {
 		return
 	}
 	var list, after []ast.Stmt
 	for i, x := range s.Lhs {
-		if id, ok := x.(*ast.Ident); ok && id.Name == "_" {
+		if id, ok := x.(*ast.Ident); ok && (id.Name == "_" || l.made(id)) {
 			continue
 		}
 		x = l.target(&list, x)

@@ -3,11 +3,12 @@
 // A cell never reaches the interpreter (yaegi) as it was written. Its way is
 //
 //	scan    cut the source at top-level semicolons: declarations here, statements there (scan.go, parse.go)
-//	check   go/types over embedded export data; the first error ends the cell and nothing has changed (check.go, imports.go)
+//	check   go/types over embedded export data; the first error ends the cell and nothing has changed (check.go, imports.go);
+//	        what may have been meant (hints.go)
 //	plan    what the cell replaces, and what of earlier cells must be compiled again to see it (redefine.go)
 //	lower   rewrite into the Go that yaegi runs well: generations of names, typed globals, folded constants (lower.go,
-//	        rewrite.go, values.go), methods as functions (methods.go), instances of generic code (generics.go), loops,
-//	        assignments and assertions with Go's meaning (loops.go, assign.go, assertions.go), guarded goroutines
+//	        rewrite.go, values.go), methods as functions (methods.go), instances of generic code (generics.go), also
+//	        that of packages (packages.go, generic), loops and ranges over functions (loops.go, rangefunc.go), assignments and assertions with Go's meaning (assign.go, assertions.go), guarded goroutines
 //	        (goroutines.go), marks for traces (marks.go)
 //	run     compile, commit the new names, call the cell's function (interpreter.go, machine.go, run.go); interrupts and the
 //	        watchdog (run.go, watchdog.go), traces (trace.go), package page (host.go)

@@ -169,6 +169,10 @@ func (l *lowering) typeInstance(t *types.Named, pos token.Pos) *instance {
 	i := &instance{args: args, slot: l.in.gens.fresh(origin.Name()), typ: t, methods: map[string]*types.Func{}}
 	l.p.instances[origin] = append(l.p.instances[origin], i)
 	l.p.named[i.slot] = t
+	l.refuseEndless(pos, t)
+	if len(l.bad) > 0 {
+		return i
+	}
 	under := l.typeExpr(t.Underlying(), pos)
 	if under == nil {
 		return i

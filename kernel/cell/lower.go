@@ -146,12 +146,55 @@ func (l *lowering) decl(d ast.Decl) {
 			break
 		}
 		d.Specs = slices.DeleteFunc(d.Specs, func(s ast.Spec) bool { return l.isConstraint(s.(*ast.TypeSpec)) })
+		for _, s := range d.Specs {
+			s := s.(*ast.TypeSpec)
+			if o := l.u.info.Defs[s.Name]; o != nil {
+				l.refuseEndless(s.Name.Pos(), o.Type())
+			}
+		}
 		if len(d.Specs) > 0 {
 			l.rewrite(d, nil)
 			l.p.types = append(l.p.types, d)
 		}
 	case *ast.FuncDecl:
 		l.function(d)
+	}
+}
+
+// refuseEndless refuses a type that contains itself with no struct or interface between, such as type T []T: the interpreter
+// looks for its end.
+func (l *lowering) refuseEndless(pos token.Pos, t types.Type) {
+	seen := map[types.Type]bool{}
+	var contains func(u types.Type) bool
+	contains = func(u types.Type) bool {
+		switch u := types.Unalias(u).(type) {
+		case *types.Named:
+			if u == t {
+				return true
+			}
+			if seen[u] || u.Obj().Pkg() == nil || u.Obj().Pkg().Path() != "main" {
+				return false
+			}
+			seen[u] = true
+			return contains(u.Underlying())
+		case *types.Map:
+			return contains(u.Key()) || contains(u.Elem())
+		case *types.Signature:
+			for _, list := range []*types.Tuple{u.Params(), u.Results()} {
+				for v := range list.Variables() {
+					if contains(v.Type()) {
+						return true
+					}
+				}
+			}
+		case interface{ Elem() types.Type }:
+			return contains(u.Elem())
+		}
+		return false
+	}
+	if contains(t.Underlying()) {
+		name := types.TypeString(t, brief)
+		l.fail(pos, "the interpreter cannot have type %s, which contains itself with no struct between; put what contains it into a struct", name)
 	}
 }
 
