@@ -8,8 +8,9 @@
 //	plan    what the cell replaces, and what of earlier cells must be compiled again to see it (redefine.go)
 //	lower   rewrite into the Go that yaegi runs well: generations of names, typed globals, folded constants (lower.go,
 //	        rewrite.go, values.go), methods as functions (methods.go), instances of generic code (generics.go), also
-//	        that of packages (packages.go, generic), loops and ranges over functions (loops.go, rangefunc.go), assignments and assertions with Go's meaning (assign.go, assertions.go), guarded goroutines
-//	        (goroutines.go), marks for traces (marks.go)
+//	        that of packages (packages.go, generic), loops and ranges over functions (loops.go, rangefunc.go), assignments
+//	        and assertions with Go's meaning (assign.go, assertions.go), guarded goroutines (goroutines.go), marks for
+//	        traces (marks.go)
 //	run     compile, commit the new names, call the cell's function (interpreter.go, machine.go, run.go); interrupts and the
 //	        watchdog (run.go, watchdog.go), traces (trace.go), package page (host.go)
 //	show    the last expression's value in the form that Go would print (last.go, show.go, typed.go, format.go)

@@ -263,7 +263,7 @@ func (g *generator) statement() {
 		}
 	}
 	deep := g.depth > 2
-	switch k := g.IntN(17); {
+	switch k := g.IntN(22); {
 	case k == 0:
 		g.variable([]string{"int", "uint8", "float64", "string", "bool", "[]int"}[g.IntN(6)])
 	case k <= 2 || deep:
@@ -341,6 +341,57 @@ func (g *generator) statement() {
 		x := g.name()
 		g.line("switch %s := any(%s).(type) {\n%scase int:\n%s\t%s += %s\n%scase string:\n%s\tfmt.Println(len(%s))\n%s}", x, g.expr([]string{"int", "string", "bool"}[g.IntN(3)], 1),
 			strings.Repeat("\t", g.depth), strings.Repeat("\t", g.depth), i, x, strings.Repeat("\t", g.depth), strings.Repeat("\t", g.depth), x, strings.Repeat("\t", g.depth))
+	case k == 16:
+		n := g.name()
+		g.block(fmt.Sprintf("switch %s := %s; %s %% 3 {", n, g.expr("int", 2), n), func() {
+			g.line("case 0:\n%s\t%s++", strings.Repeat("\t", g.depth), i)
+			g.line("case 1, -1:\n%s\t%s -= %s", strings.Repeat("\t", g.depth), i, n)
+			g.line("default:")
+			body()
+		}, "}")
+	case k == 17:
+		a, p, n := g.name(), g.name(), g.name()
+		g.line("var %s [3][2]int", a)
+		g.line("%s := &%s", p, a)
+		g.block(fmt.Sprintf("for %s := range %s {", n, p), func() {
+			g.line("%s[%s][%s&1] = %s", p, n, n, g.expr("int", 2))
+			g.line("%s[%s][0] %s= %s", a, n, []string{"+", "*", "^"}[g.IntN(3)], g.expr("int", 1))
+		}, "}")
+		g.line("%s += %s[0][0] - %s[2][%s&1]", i, p, a, i)
+		q := g.name()
+		g.line("%s := %s", q, a)
+		g.line("%s[1] = %s[0]", q, a)
+		g.line("fmt.Println(%s, *%s, %s == %s)", q, p, q, a)
+	case k == 18:
+		n, r := g.name(), g.name()
+		g.block(fmt.Sprintf("for %s, %s := range %s {", n, r, g.expr("string", 2)), func() {
+			g.line("%s += %s * int(%s)", i, n, r)
+			body()
+		}, "}")
+	case k == 19:
+		s, n := g.name(), g.name()
+		g.line("%s := []pair{%s, %s}", s, g.expr("pair", 1), g.expr("pair", 1))
+		g.block(fmt.Sprintf("for %s := range %s {", n, s), func() {
+			g.line("%s[%s].a %s= %s", s, n, []string{"+", "-", "|"}[g.IntN(3)], g.expr("int", 1))
+			g.line("%s[%s].grow(%s)", s, n, i)
+		}, "}")
+		g.line("%s, %s[0] = %s[1].sum(%s), %s[1]", i, s, s, i, s)
+		g.line("fmt.Println(%s)", s)
+	case k == 20:
+		c, n := g.name(), g.name()
+		g.line("%s := make(chan int, 3)", c)
+		g.line("%s <- %s", c, g.expr("int", 1))
+		g.line("%s <- %s", c, g.expr("int", 1))
+		g.line("%s += <-%s - 1", i, c)
+		g.line("close(%s)", c)
+		g.block(fmt.Sprintf("for %s := range %s {", n, c), func() {
+			g.line("%s ^= %s", i, n)
+			body()
+		}, "}")
+		g.line("_, %s = <-%s, 0", i, c)
+		ok := g.name()
+		g.line("_, %s := <-%s", ok, c)
+		g.line("fmt.Println(%s)", ok)
 	default:
 		g.block("func() {", func() {
 			g.line("defer func() { %s++ }()", i)
