@@ -41,9 +41,9 @@ func (k *kernel) work(life context.Context) {
 		k.mu.Lock()
 		k.cancel, k.idle = cancel, idle
 		k.mu.Unlock()
-		space := newSpace(&k.settled)
+		k.space.begin()
 		stop := k.execute(ctx, m)
-		space.end()
+		k.space.end()
 		cancel(nil)
 		close(idle)
 		k.abort(stop)

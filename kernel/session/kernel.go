@@ -51,7 +51,7 @@ type kernel struct {
 	queue   *wire.Queue[*wire.Message] // execute requests
 	current atomic.Pointer[output]     // of the cell that runs or ran last
 	history history
-	settled atomic.Uint64 // bytes of the heap when memory was last given back
+	space   *space
 
 	questions questions
 
@@ -80,7 +80,7 @@ func (noCapture) settle()  {}
 
 func newKernel(server *wire.Server, log *slog.Logger, start func() (interpreter, error)) *kernel {
 	k := &kernel{
-		wire: server, log: log, start: sync.OnceValues(start), capture: noCapture{},
+		wire: server, log: log, start: sync.OnceValues(start), capture: noCapture{}, space: newSpace(),
 		queue: wire.NewQueue[*wire.Message](), ended: make(chan struct{}),
 	}
 	k.questions.turn = make(chan struct{}, 1)
@@ -91,6 +91,7 @@ func newKernel(server *wire.Server, log *slog.Logger, start func() (interpreter,
 func (k *kernel) run(ctx context.Context) error {
 	life, cancel := context.WithCancel(ctx)
 	defer cancel()
+	defer k.space.close()
 	k.publish(nil, "status", status{"starting"})
 	go func() { // at once, and not only for the first cell: it takes longer than everything else
 		if _, err := k.start(); err != nil {

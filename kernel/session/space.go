@@ -5,78 +5,83 @@ import (
 	"runtime/debug"
 	"runtime/metrics"
 	"sync"
-	"sync/atomic"
 	"time"
 )
 
 const (
 	longCell = 250 * time.Millisecond
-	wide     = 128 << 20 // bytes of garbage that may pile up while a cell runs long
+	narrow   = 24 << 20  // bytes of garbage that may pile up
+	wide     = 128 << 20 // and while a cell runs long
 	spare    = 32 << 20  // bytes that may be kept of the system although nobody may need them
+	smallest = 8 << 20   // bytes that a kernel uses at least
 )
 
-// A space is the memory that a cell works in. The heap of a kernel is small, so interpreted code that allocates would have
-// it collected twenty times a second, and each time everything stops until the system has let every thread have its say:
-// milliseconds each where cells keep all cores busy, in which no heartbeat is answered. A cell that runs long therefore may
-// leave more garbage before it is collected. When a cell has ended, what it has used much of goes back to the system.
+// A space is the memory that cells work in. The heap of a kernel is small, so with the runtime's rule, as much garbage as
+// there is live memory, interpreted code that allocates would have it collected twenty times a second. Each time everything
+// stops until the system has let every thread have its say: milliseconds where cells keep all cores busy, in which no
+// heartbeat is answered. So a little garbage may always pile up, and more while a cell runs long; a large heap is collected
+// as ever. When a cell has ended, what it has used much of goes back to the system.
 type space struct {
-	mu     sync.Mutex
-	timer  *time.Timer
-	normal int  // percentage before, while wide
-	now    int  // percentage set, 0 while the space is not wide
-	over   bool // the cell has ended
-
-	settled *atomic.Uint64 // bytes that were held when memory was last given back
+	mu      sync.Mutex
+	lowest  int         // percentage with which the process was started
+	percent int         // as it is set
+	timer   *time.Timer // of the cell that runs, or nil
+	settled uint64      // bytes that were held when memory was last given back
 }
 
-// newSpace is called when a cell begins.
-func newSpace(settled *atomic.Uint64) *space {
-	s := &space{settled: settled}
-	s.mu.Lock()
-	defer s.mu.Unlock()
-	s.timer = time.AfterFunc(longCell, s.widen)
+func newSpace() *space {
+	s := &space{lowest: int(min(metric("/gc/gogc:percent"), math.MaxInt32))} // the largest of all numbers stands for off
+	s.percent = s.lowest
+	s.allow(narrow)
 	return s
 }
 
-// widen sets the percentage for the memory that is in use, again and again: what is right for a small heap would let a
-// large one grow without bound.
-func (s *space) widen() {
+// close leaves the process as it was.
+func (s *space) close() { debug.SetGCPercent(s.lowest) }
+
+// begin is called when a cell begins.
+func (s *space) begin() {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	if s.over {
-		return
-	}
-	s.timer.Reset(longCell)
-	normal := s.normal
-	if s.now == 0 {
-		normal = int(min(metric("/gc/gogc:percent"), math.MaxInt32)) // the largest of all numbers stands for off
-	}
-	percent := max(normal, int(100*wide/max(metric("/gc/heap/live:bytes"), 1<<20)))
-	if s.now == 0 && percent == normal || s.now > percent/2 && s.now < percent+percent/2 {
-		return // each change stops everything, too
-	}
-	debug.SetGCPercent(percent)
-	s.normal, s.now = normal, percent
+	var timer *time.Timer
+	timer = time.AfterFunc(longCell, func() {
+		s.mu.Lock()
+		defer s.mu.Unlock()
+		if s.timer == timer {
+			s.allow(wide)
+			timer.Reset(longCell) // what is right for a small heap would let a large one grow without bound
+		}
+	})
+	s.timer = timer
 }
 
 // end is called when the cell has been answered.
 func (s *space) end() {
 	s.mu.Lock()
 	defer s.mu.Unlock()
-	s.over = true
 	s.timer.Stop()
-	if s.now != 0 {
-		debug.SetGCPercent(s.normal)
-	}
+	s.timer = nil
+	s.allow(narrow)
 	h := held()
-	if h < s.settled.Load() {
-		s.settled.Store(h)
-	}
-	if s.now != 0 || h > s.settled.Load()+spare {
+	s.settled = min(s.settled, h)
+	if h > s.settled+spare {
+		s.settled = h // until it is known
 		go func() {
 			debug.FreeOSMemory()
-			s.settled.Store(held())
+			s.mu.Lock()
+			defer s.mu.Unlock()
+			s.settled = held()
 		}()
+	}
+}
+
+// allow lets so many bytes of garbage pile up, for the memory that is in use, with mu held. Each change stops everything,
+// too, so small ones are not made.
+func (s *space) allow(garbage uint64) {
+	percent := max(s.lowest, int(100*garbage/max(metric("/gc/heap/live:bytes"), smallest)))
+	if s.percent < percent/2 || s.percent > percent+percent/2 {
+		debug.SetGCPercent(percent)
+		s.percent = percent
 	}
 }
 
