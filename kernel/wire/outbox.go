@@ -33,6 +33,7 @@ type outbox struct {
 
 	queue  net.Buffers // full pieces
 	tail   []byte      // small writes since the last piece
+	spare  []byte      // for the next tail, with nothing in it
 	size   int         // bytes in queue and tail and in the write under way
 	taken  int64       // bytes that the connection has taken so far
 	flow   meter       // where messages begin and end
@@ -90,6 +91,9 @@ func (o *outbox) command(frame []byte) {
 func (o *outbox) add(p []byte) {
 	o.size += len(p)
 	if len(p) < smallWrite {
+		if o.tail == nil {
+			o.tail, o.spare = o.spare, nil
+		}
 		o.tail = append(o.tail, p...)
 		if len(o.tail) < burst {
 			return
@@ -145,12 +149,15 @@ func (o *outbox) fail(err error) {
 // run writes what is queued until the connection is given up.
 func (o *outbox) run() {
 	for {
-		batch, n := o.next()
+		batch, n, tail := o.next()
 		if n == 0 {
 			return
 		}
 		_, err := batch.WriteTo(o.conn)
 		o.mu.Lock()
+		if tail != nil && cap(tail) <= 2*smallWrite {
+			o.spare = tail[:0]
+		}
 		if err != nil {
 			o.fail(err)
 		} else if o.err == nil {
@@ -162,15 +169,20 @@ func (o *outbox) run() {
 	}
 }
 
-// next waits for something to write and takes one burst of it; none means the end.
-func (o *outbox) next() (batch net.Buffers, n int) {
+// next waits for something to write and takes one burst of it; none means the end. Where that is the tail alone, it is
+// returned for use as another, since what was passed by reference must not be written to.
+func (o *outbox) next() (batch net.Buffers, n int, tail []byte) {
 	o.mu.Lock()
 	defer o.mu.Unlock()
 	for o.err == nil && len(o.queue) == 0 && len(o.tail) == 0 {
 		o.changed.Wait()
 	}
 	if o.err != nil {
-		return nil, 0
+		return nil, 0, nil
+	}
+	if len(o.queue) == 0 {
+		tail, o.tail = o.tail, nil
+		return net.Buffers{tail}, len(tail), tail
 	}
 	if len(o.tail) > 0 {
 		o.queue = append(o.queue, o.tail)
@@ -182,7 +194,7 @@ func (o *outbox) next() (batch net.Buffers, n int) {
 		o.queue[0] = nil
 		o.queue = o.queue[1:]
 	}
-	return batch, n
+	return batch, n, nil
 }
 
 // drained reports whether everything has been handed to the network, or never will be.

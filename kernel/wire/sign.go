@@ -5,13 +5,15 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"errors"
+	"hash"
 	"sync"
 )
 
 // A signer signs and checks the four JSON frames of a message with HMAC-SHA256 over the bytes as they are on the wire.
 // With an empty key nothing is signed and everything is accepted.
 type signer struct {
-	key []byte
+	key  []byte
+	macs sync.Pool // of hash.Hash with the key
 
 	mu     sync.Mutex
 	recent map[memo]struct{} // signatures accepted of late; guarded by mu
@@ -35,11 +37,16 @@ var (
 )
 
 func (s *signer) digest(frames [][]byte) (d digest) {
-	mac := hmac.New(sha256.New, s.key)
+	mac, ok := s.macs.Get().(hash.Hash)
+	if !ok {
+		mac = hmac.New(sha256.New, s.key)
+	}
 	for _, f := range frames {
 		mac.Write(f)
 	}
 	mac.Sum(d[:0])
+	mac.Reset()
+	s.macs.Put(mac)
 	return d
 }
 
