@@ -208,6 +208,7 @@ func TestShutdown(t *testing.T) {
 						return nil, context.Cause(ctx)
 					},
 				}})
+				c.ask(wire.Shell, "kernel_info_request", object{}) // a shutdown does not wait for a new client's subscription
 				var cells []string
 				if running {
 					cells = []string{c.start("wait", nil), c.start("wait", nil)}
