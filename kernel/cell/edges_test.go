@@ -140,11 +140,21 @@ func TestEdges(t *testing.T) {
 			"import \"sync\"\nonce := sync.OnceValue(func() int { fmt.Print(\"once \"); return 4 })\nonce(), once()", "once 4 4",
 			"import \"time\"\nds := []time.Duration{time.Second, time.Millisecond}\nslices.Sort(ds)\nds", "[1ms 1s]",
 			"slices.Insert(s, 9, 1)", "error: slice bounds out of range", "slices.Reverse, 1", "error: cannot infer S",
-			"import \"errors\"\nerrors.AsType[error](nil)", "error: errors.AsType is not available: cells can use generic code of their own, and of slices, maps, cmp, iter and sync",
+			"import \"reflect\"\nreflect.TypeFor[error]()", "error: reflect.TypeFor is not available: cells can use generic code of their own, and of cmp, errors, iter, maps, math/rand/v2, slices and sync",
 		}},
 		{"23 unexported fields in JSON are a limit", []string{"import \"encoding/json\"\ntype t struct{ A, b int }\nout, err := json.Marshal(t{1, 2})\nstring(out)", `{"A":1,"Xb":2}`}},
 		{"14 a last line of several values", []string{"1, \"a\"", "1 a", "x := []int{1}\nx, len(x), math.Sqrt(4) // both", "[1] 1 2", "x, y", "error: cell[3]:1:4: undefined: y", "x, 1 = 2", "error: cell[4]:1:"}},
 		{"19 hints", []string{"var mu sync.Mutex", "error: cell[1]:1:8: undefined: sync; add import \"sync\"", "import \"mat\"", "error: it has \"gonum.org/v1/gonum/mat\""}},
+		{"recover in literals", []string{
+			"func g() { f := func() { fmt.Print(recover()) }; defer f(); panic(\"x\") }", "error: cell[1]:1:36: cells cannot recover in a function literal that is deferred in a loop or kept as a value",
+			"for range 3 { defer func() { recover() }() }", "error: cells cannot recover in a function literal",
+			"func h() { fmt.Print(recover()) }\nfunc g() { for range 2 { defer h() }; panic(\"x\") }\ng()", "x<nil>",
+			"for i := range 2 { func() { defer func() { fmt.Print(i, recover()) }(); panic(\"x\") }() }", "0x1x",
+			"try := func(f func()) (e any) { defer func() { e = recover() }(); f(); return }\ntry(func() { panic(7) })", "7",
+		}},
+		{"errors of a type", []string{
+			"import \"errors\"\ntype own struct{ n int }\nfunc (o *own) Error() string { return \"own\" }\nfunc f() error { return fmt.Errorf(\"w: %w\", &own{3}) }\ne, ok := errors.AsType[*own](f())\ne.n, ok", "3 true",
+		}},
 		{"limits are refused", []string{
 			"type L []L", "error: cell[1]:1:6: the interpreter cannot have type L, which contains itself", "type M map[string]*M", "error: which contains itself", "type F func(F) int", "error: which contains itself", "type G[T any] []G[T]\nvar g G[int]", "error: which contains itself", "type N struct{ m map[string]N }", "",
 			"type V interface{ V() int }\nm := map[V]int{}", "error: 2:10: the interpreter cannot look up keys of the interface type V",

@@ -41,6 +41,7 @@ type lowering struct {
 	hoisted   map[*ast.BlockStmt]bool              // blocks made of one statement, whose label belongs to their last one
 	ranged    map[*ast.BlockStmt]bool              // blocks that were loops over functions
 	results   []types.Type                         // of the function that is being lowered
+	framed    map[*ast.FuncLit]bool                // literals that recover would not work in; see recoverCall
 	called    map[ast.Expr]bool                    // functions of calls
 	comms     map[ast.Stmt]bool                    // sends and receives of select statements
 	returns   map[*ast.ReturnStmt][]types.Type     // what returns give their values to
@@ -61,7 +62,7 @@ func (in *Interpreter) lower(u *unit) (*program, error) {
 			serial: in.runs, slots: map[types.Object]string{}, uses: map[*decl]map[string]types.Object{}, methods: map[types.Object]string{}, marks: map[string]bool{},
 			used: map[string]bool{}, instances: map[types.Object][]*instance{}, named: map[string]types.Type{},
 		},
-		params: map[types.Object]bool{}, hoisted: map[*ast.BlockStmt]bool{}, ranged: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, returns: map[*ast.ReturnStmt][]types.Type{}, synthetic: map[*ast.CallExpr]bool{},
+		params: map[types.Object]bool{}, framed: map[*ast.FuncLit]bool{}, hoisted: map[*ast.BlockStmt]bool{}, ranged: map[*ast.BlockStmt]bool{}, called: map[ast.Expr]bool{}, comms: map[ast.Stmt]bool{}, returns: map[*ast.ReturnStmt][]types.Type{}, synthetic: map[*ast.CallExpr]bool{},
 		typed: map[*ast.CallExpr]map[int]types.Type{}, nameArgs: map[*ast.CallExpr][]int{},
 	}
 	pos := u.src.fn.Body.Lbrace

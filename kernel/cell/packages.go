@@ -167,7 +167,7 @@ func (g *genericPackage) scope(without map[string]bool) *types.Package {
 // missing says why a name of a package is not available.
 func missing(p *types.Package, name string) string {
 	if o := p.Scope().Lookup(name); o != nil && isGeneric(o) {
-		return fmt.Sprintf("%s.%s is not available: cells can use generic code of their own, and of slices, maps, cmp, iter and sync", p.Name(), name)
+		return fmt.Sprintf("%s.%s is not available: cells can use generic code of their own, and of cmp, errors, iter, maps, math/rand/v2, slices and sync", p.Name(), name)
 	}
 	return fmt.Sprintf("%s.%s is not available: the interpreter's tables end before it", p.Name(), name)
 }

@@ -26,6 +26,9 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 	switch n := c.Node().(type) {
 	case *ast.FuncLit:
 		l.nest = append(l.nest, n)
+		if !l.called[n] {
+			l.framed[n] = true
+		}
 		l.findReturns(n.Type, n.Body)
 	case *ast.FuncDecl:
 		l.findReturns(n.Type, n.Body)
@@ -33,8 +36,12 @@ func (l *lowering) before(c *astutil.Cursor) bool {
 		l.nest = append(l.nest, n)
 	case *ast.CallExpr:
 		l.called[ast.Unparen(n.Fun)] = true
+		l.recoverCall(n)
 		l.findTyped(n)
 	case *ast.DeferStmt:
+		if lit, ok := ast.Unparen(n.Call.Fun).(*ast.FuncLit); ok && l.inLoop() {
+			l.framed[lit] = true
+		}
 		l.noRecover(n.Call)
 	case *ast.CommClause:
 		l.comms[n.Comm] = true
@@ -257,6 +264,23 @@ func (l *lowering) arrayOf(n *ast.IndexExpr) {
 		l.u.info.Types[star] = types.TypeAndValue{Type: p.Elem()}
 		n.X = &ast.ParenExpr{Lparen: n.X.Pos(), X: star, Rparen: n.X.End()}
 		l.u.info.Types[n.X] = types.TypeAndValue{Type: p.Elem()}
+	}
+}
+
+// recoverCall refuses to recover in a literal that has a frame of its own: the interpreter looks for the panic in the frame
+// where a literal stands.
+func (l *lowering) recoverCall(n *ast.CallExpr) {
+	id, ok := ast.Unparen(n.Fun).(*ast.Ident)
+	if !ok || l.u.info.Uses[id] != types.Universe.Lookup("recover") {
+		return
+	}
+	for i := len(l.nest) - 1; i >= 0; i-- {
+		if lit, ok := l.nest[i].(*ast.FuncLit); ok {
+			if l.framed[lit] {
+				l.fail(n.Pos(), "cells cannot recover in a function literal that is deferred in a loop or kept as a value; defer a literal outside of loops, or a function with a name")
+			}
+			return
+		}
 	}
 }
 
