@@ -37,8 +37,9 @@ PYTHON = {
     "lines": "for i in range(20000):\n    print(i)",
     "text": "for i in range(10240):\n    print('x' * 1023)",
     "display": "from IPython.display import display\ndisplay({'text/plain': 'A' * (10 << 20)}, raw=True)",
-    "burn": "import threading, time\ndef burn(s):\n    e = time.time() + s\n    while time.time() < e: pass\n"
-    "for i in range(%d): threading.Thread(target=burn, args=(%d,)).start()\nburn(%d)",
+    # Processes: two threads of Python share one core.
+    "burn": "import subprocess, sys, time\nfor i in range(%d):\n    subprocess.Popen([sys.executable, '-c', 'import time\\ne = time.time() + %d\\nwhile time.time() < e: pass'])\n"
+    "e = time.time() + %d\nwhile time.time() < e: pass",
     "numbered": "n%d = %d\nn%d * 2",
 }
 
