@@ -20,6 +20,9 @@ func (in *Interpreter) hint(u *unit, p *types.Package, decls []ast.Decl, e types
 		if base, member, ok := strings.Cut(name, "."); ok {
 			return in.undefinedMember(u, msg, base, member)
 		}
+		if in.packageNamed(u.imports, name) != "" {
+			return fmt.Sprintf("use of package %s without selector", name)
+		}
 		if path := in.lib.named(name); path != "" {
 			return fmt.Sprintf("%s; add import %q", msg, path)
 		}

@@ -21,6 +21,8 @@ func TestHints(t *testing.T) {
 		{"a local variable", "func f(volts int) int { return vlots }", "undefined: vlots; did you mean volts?"},
 		{"nothing near", "qqqq", "cell[1]:1:1: undefined: qqqq\n    qqqq"},
 		{"a package", "strings.ToUpper(\"a\")", `undefined: strings; add import "strings"`},
+		{"a package alone", "linecode", "cell[1]:1:1: use of package linecode without selector"},
+		{"an imported package alone", "import \"strings\"\nx := strings", "cell[1]:2:6: use of package strings without selector"},
 		{"panics of a callback", "linecode.New(linecode.Spec{Name: \"a\", Bits: 1, Start: 0, Step: func(any, uint) (any, []float64) { var q []float64; return 0, q[:3] }})", "Step panicked in state 0 on word 0: slice bounds out of range"},
 	}
 	for _, tt := range tests {
