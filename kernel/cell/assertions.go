@@ -136,9 +136,10 @@ func uses(list []ast.Stmt, name string) bool {
 	return false
 }
 
-// assert turns an assertion to an interface type, or to a paired one, into a call of a function literal: with two results if it is the right
-// side of v, ok := x.(I), and else with one, which panics. The interpreter panics when nil is asserted to be an interface,
-// and cannot find the methods of a cell's value in an any, so the literal asks for each type of the cells that has them:
+// assert turns an assertion to an interface type, or to a paired one, into a call of a function literal: with two results
+// if it is the right side of v, ok := x.(I), and else with one, which panics. The interpreter panics when nil is asserted
+// to be an interface, and cannot find the methods of a cell's value in an any, so the literal asks for each type of the
+// cells that has them:
 //
 //	func(e any) (I, bool) {
 //		if e == nil { return nil, false }
@@ -190,7 +191,7 @@ func (l *lowering) assertion(pos token.Pos, typ ast.Expr, from, to types.Type, t
 	inside := &ast.BlockStmt{Lbrace: pos, Rbrace: pos}
 	if from == nil {
 		// impossible: nothing to ask for
-	} else if i, ok := from.Underlying().(*types.Interface); ok && i.Empty() {
+	} else if isAny(from) {
 		candidates := l.implementers(to)
 		if !types.IsInterface(to) {
 			candidates = []types.Type{to}

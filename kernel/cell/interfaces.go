@@ -12,14 +12,9 @@ import (
 
 // findReturns notes what a function's returns give their values to.
 func (l *lowering) findReturns(t *ast.FuncType, body *ast.BlockStmt) {
-	if t.Results == nil || body == nil {
+	results := l.fieldTypes(t.Results)
+	if results == nil || body == nil {
 		return
-	}
-	var results []types.Type
-	for _, f := range t.Results.List {
-		for range max(1, len(f.Names)) {
-			results = append(results, l.u.info.TypeOf(f.Type))
-		}
 	}
 	ast.Inspect(body, func(n ast.Node) bool {
 		if r, ok := n.(*ast.ReturnStmt); ok && len(r.Results) == len(results) {

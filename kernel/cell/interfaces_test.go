@@ -27,6 +27,7 @@ func TestIntoInterfaces(t *testing.T) {
 			"func neg(x float64) (any, error) { return -x, nil }\nneg(2)", "-2",
 			"func c(x int) (r any, ok bool) { if x > 3 { r = x % 3; ok = true }; return }\nc(5)", "2 true",
 			"func lit(v int) func() any { return func() any { return ^v } }\nlit(1)()", "-2",
+			"func first(n int) any { for i := range func(yield func(int) bool) { yield(n) } { return -i }; return nil }\nfirst(4)", "-4",
 			"func three() (int, any) { v := 2; return v, -v }\nthree()", "2 -2",
 		}},
 		{"operations as interfaces with methods", []string{

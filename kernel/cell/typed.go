@@ -41,7 +41,7 @@ func (l *lowering) findTyped(call *ast.CallExpr) {
 		if sl, ok := param.(*types.Slice); ok && sig.Variadic() && i >= sig.Params().Len()-1 {
 			param = sl.Elem()
 		}
-		if in, ok := param.Underlying().(*types.Interface); !ok || !in.Empty() {
+		if !isAny(param) {
 			continue
 		}
 		t := l.u.info.TypeOf(a)
